@@ -1,0 +1,2 @@
+//! The binary `tidereeve`.
+fn main() {}

@@ -1,0 +1,2 @@
+//! An adapter built to do everything wrong.
+fn main() {}
