@@ -1,0 +1,1 @@
+//! Shared by the integration tests: where data lies, how a run is judged.
