@@ -18,6 +18,7 @@ pub struct Wish {
     pub state_seq: u64,
 }
 
+#[expect(clippy::large_enum_variant, reason = "findings stay on the stack: no allocation here")]
 #[derive(PartialEq, Debug)]
 pub enum Verdict {
     Permit(Permit),
@@ -48,6 +49,7 @@ pub fn judge(rules: &Rules, scene: &Scene, wish: &Wish, now: Mono) -> Verdict {
 }
 
 /// The answer to a renewal.
+#[expect(clippy::large_enum_variant, reason = "findings stay on the stack: no allocation here")]
 #[derive(PartialEq, Debug)]
 pub enum Renewed {
     Renewal(Renewal),

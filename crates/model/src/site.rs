@@ -216,6 +216,8 @@ pub struct Settings {
     pub horizon: Span,
     /// Share of a flow cap that a release aims at, so that the meter's error stays under the cap.
     pub flow_aim: f64,
+    /// Share of a ramp cap that a change of flow aims at; planner and engine both ramp so.
+    pub ramp_aim: f64,
     /// Clock uncertainty, taken once off both ends of a window with a predicted anchor.
     pub clock_margin: Span,
     /// Standard deviations taken off an edge with a modelled or observed anchor.
