@@ -18,7 +18,6 @@ pub struct Wish {
     pub state_seq: u64,
 }
 
-#[expect(clippy::large_enum_variant, reason = "findings stay on the stack: no allocation here")]
 #[derive(PartialEq, Debug)]
 pub enum Verdict {
     Permit(Permit),
