@@ -21,6 +21,7 @@
 //! ```
 
 mod bisect;
+mod daily_inflow;
 mod error;
 mod friction;
 mod orifice;
@@ -35,6 +36,7 @@ mod villemonte;
 mod weir;
 mod wet_well;
 
+pub use daily_inflow::daily_inflow_m3_s;
 pub use error::StructureError;
 pub use friction::{Friction, colebrook_white, swamee_jain};
 pub use orifice::{free_orifice_m3_s, submerged_orifice_discharge, submerged_orifice_m3_s};
