@@ -116,16 +116,30 @@ impl Plant {
     }
     /// Prolongs (or shortens) the lease of an asset that is driven.
     pub fn renew(&mut self, asset: usize, lease_end: Mono) -> Result<(), PlantError> {
-        let boot = self.boot;
-        let device = self.devices.get_mut(asset).ok_or(PlantError::NoSuchAsset { asset })?;
-        let lease = device.lease.as_mut().ok_or(PlantError::NothingToRenew { asset })?;
-        if lease_end <= boot {
+        let command = self.driven_by(asset)?;
+        self.renew_as(command, asset, lease_end)
+    }
+    /// The same, refused unless it is this command that drives the asset.
+    pub fn renew_as(
+        &mut self,
+        command: u64,
+        asset: usize,
+        lease_end: Mono,
+    ) -> Result<(), PlantError> {
+        if self.driven_by(asset)? != command {
+            return Err(PlantError::NothingToRenew { asset });
+        }
+        if lease_end <= self.boot {
             return Err(PlantError::LeasePast { asset });
         }
-        lease.end = lease_end;
-        let command = lease.command;
+        self.devices[asset].lease = Some(Lease { command, end: lease_end });
         self.event(EventKind::Renewed { asset, command, lease_end });
         Ok(())
+    }
+    /// The command that drives an asset now.
+    fn driven_by(&self, asset: usize) -> Result<u64, PlantError> {
+        let device = self.devices.get(asset).ok_or(PlantError::NoSuchAsset { asset })?;
+        device.lease.map(|l| l.command).ok_or(PlantError::NothingToRenew { asset })
     }
     /// Sends an asset to the rest that its controller is set to.
     pub fn rest(&mut self, asset: usize, why: &str) -> Result<(), PlantError> {
@@ -401,6 +415,11 @@ impl Plant {
     }
     pub const fn gate_percent(&self) -> f64 {
         self.gate_share * 100.0
+    }
+    /// Nothing is driven, nothing is on its way to rest, and no pump runs.
+    pub fn is_quiet(&self) -> bool {
+        let at_rest = |d: &Device| d.lease.is_none() && !d.resting;
+        self.devices.iter().all(at_rest) && !self.pumps_run.contains(&true)
     }
     pub const fn ports_m3_s(&self) -> f64 {
         self.ports_m3_s

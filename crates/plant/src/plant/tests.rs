@@ -109,6 +109,7 @@ fn renewals_keep_it_open_and_shut_leases_are_refused() {
         run.plant.renew(0, end).unwrap();
     }
     assert_eq!(run.plant.gate_percent(), 30.0);
+    assert!(!run.plant.is_quiet());
     let boot = run.plant.boot();
     assert_eq!(run.plant.drive(0, 40.0, boot), Err(PlantError::LeasePast { asset: 0 }));
     let out = run.plant.drive(0, 100.1, boot + LONG);
@@ -117,6 +118,8 @@ fn renewals_keep_it_open_and_shut_leases_are_refused() {
     assert!(matches!(nan, Err(PlantError::SettingOutOfRange { .. })));
     assert_eq!(run.plant.drive(7, 0.0, boot + LONG), Err(PlantError::NoSuchAsset { asset: 7 }));
     assert_eq!(run.plant.renew(1, boot + LONG), Err(PlantError::NothingToRenew { asset: 1 }));
+    let other = run.plant.renew_as(9, 0, boot + LONG);
+    assert_eq!(other, Err(PlantError::NothingToRenew { asset: 0 }), "another command drives it");
     assert_eq!(run.found(|k| matches!(k, EventKind::DriveRefused { .. })).len(), 4);
     assert_eq!(run.plant.gate_percent(), 30.0, "nothing moved");
 }
