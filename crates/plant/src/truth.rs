@@ -26,6 +26,9 @@ impl SplitMix64 {
     }
 }
 
+/// Grid of the sensors' noise.
+const NOISE_GRID: Span = Span::seconds(30);
+
 /// The drawn differences. Every factor is 1 and every error 0 in [`Truth::as_plated`].
 #[derive(Clone, PartialEq, Debug)]
 pub struct Truth {
@@ -109,9 +112,14 @@ impl Truth {
         // A triangle of that area: its peak is twice the mean.
         2.0 * volume_m3 / length_s * (1.0 - (2.0 * share - 1.0).abs())
     }
-    /// Noise of one sensor at `t`, evenly in [-1, 1): a function of seed, sensor and instant.
+    /// Noise of one sensor at `t`, in [-1, 1): a function of seed, sensor and instant. It wanders
+    /// in straight lines between values on a 30 s grid, as waves seen through a stilling well do,
+    /// so that two readings close together agree.
     pub(crate) fn noise(&self, sensor: u64, t: Utc) -> f64 {
-        self.stream(t.as_micros() as u64, 1_000 + sensor).between(-1.0, 1.0)
+        let before = t.floor_to(NOISE_GRID);
+        let value = |at: Utc| self.stream(at.as_micros() as u64, 1_000 + sensor).between(-1.0, 1.0);
+        let share = (t - before).as_seconds() / NOISE_GRID.as_seconds();
+        value(before) * (1.0 - share) + value(before + NOISE_GRID) * share
     }
     /// A generator for one purpose and one key, far from its neighbours.
     fn stream(&self, key: u64, purpose: u64) -> SplitMix64 {
@@ -154,6 +162,16 @@ mod tests {
         lags.dedup();
         assert_eq!(lags.len(), 500);
         assert!(lags[0] < Span::minutes(-9) && lags[499] > Span::minutes(9));
+    }
+
+    #[test]
+    fn noise_wanders_slowly_and_fills_its_band() {
+        let truth = Truth::drawn(9);
+        let at = |s| truth.noise(0, Utc::from_micros(1_800_000_000_000_000) + Span::seconds(s));
+        let all: Vec<f64> = (0..20_000).map(at).collect();
+        assert!(all.windows(2).all(|w| (w[1] - w[0]).abs() <= 2.0 / 30.0));
+        assert!(all.iter().copied().fold(0.0, f64::max) > 0.9);
+        assert!(all.iter().copied().fold(0.0, f64::min) < -0.9);
     }
 
     #[test]
