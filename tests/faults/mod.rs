@@ -1,1 +1,4 @@
-//! To be filled.
+//! What breaks: wrong files, bad adapters, dead processes, full disks, clocks that step.
+
+mod site;
+mod site_rows;

@@ -25,7 +25,19 @@ pub(crate) struct Known<'a> {
 pub(crate) fn licence(root: &Table<'_>, known: &Known<'_>) -> Option<Licence> {
     let reference = root.words("reference", "HARL/T/1");
     let title = root.words("title", "Permit to discharge");
+    let count = root.need("clause_count", "`clause_count = 8`, the number of clauses that follow");
+    let count = count.and_then(|n| Some((n, n.whole(1, 1000)?)));
     let tables = root.some_tables("clauses", "clause");
+    let has = tables.len();
+    if let Some((node, said)) = count
+        && said != has as u64
+    {
+        node.fault::<()>(
+            codes::CLAUSE_COUNT,
+            format!("this must be the number of clauses that follow, and the file has {has}"),
+            "find the clause that is missing or too many; only then change the number",
+        );
+    }
     let mut numbers: Vec<String> = Vec::new();
     let made: Vec<_> = tables
         .into_iter()

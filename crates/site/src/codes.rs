@@ -57,6 +57,7 @@ pub(crate) const ROUNDING: Code = Code("L007");
 pub(crate) const CONDITION: Code = Code("L008");
 pub(crate) const NO_CURRENT: Code = Code("L009");
 pub(crate) const CLAUSE_NUMBER: Code = Code("L010");
+pub(crate) const CLAUSE_COUNT: Code = Code("L011");
 
 pub(crate) const NEVER_TOGETHER: Code = Code("N001");
 pub(crate) const UNGOVERNED: Code = Code("N002");
@@ -98,7 +99,7 @@ mod tests {
             assert!(e.text.len() > 80, "{} is too short to help", e.code);
         }
         let count = |letter: char| all.iter().filter(|e| e.code.starts_with(letter)).count();
-        assert_eq!((count('S'), count('L'), count('N')), (38, 10, 5));
+        assert_eq!((count('S'), count('L'), count('N')), (38, 11, 5));
         assert_eq!(explain(" s012 ").map(|e| e.code), Some("S012"));
         assert_eq!(explain("S999"), None);
     }

@@ -106,14 +106,16 @@ fn datums(root: &Table<'_>, site_datum: Option<&str>) -> Datums {
         // A wrong height has been noted; its name still counts as known, so that not every level
         // that uses it is a fault too.
         let offset_m = node.quantity(&LENGTH, -100.0, 100.0);
-        if Some(name) == site_datum && offset_m.is_some_and(|o| o != 0.0) {
+        let is_site_datum = Some(name) == site_datum;
+        if is_site_datum && offset_m.is_some_and(|o| o != 0.0) {
             node.fault::<()>(
                 codes::SITE_DATUM,
                 "the site datum must lie 0 m above itself",
                 "write \"0 m\", and put every other datum relative to it",
             );
         }
-        list.push((name.to_owned(), offset_m.unwrap_or(0.0)));
+        let offset_m = offset_m.filter(|_| !is_site_datum).unwrap_or(0.0);
+        list.push((name.to_owned(), offset_m));
     }
     if let Some(datum) = site_datum
         && !list.iter().any(|d| d.0 == datum)

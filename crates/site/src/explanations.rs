@@ -301,6 +301,12 @@ pub(crate) const TABLE: &[(Code, &str, &str)] = &[
       in quotes: bare 2.10 would be read as the number 2.1.",
     ),
     (
+        CLAUSE_COUNT,
+        "a clause went missing, or one too many",
+        "The head of the licence file says how many clauses follow. A copy that was cut off between \
+      two clauses would otherwise load and simply not keep the rest of the licence.",
+    ),
+    (
         NEVER_TOGETHER,
         "two windows that never hold together",
         "Both clauses govern the same asset, and no instant is inside both windows, so the asset could \

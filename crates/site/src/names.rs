@@ -33,12 +33,17 @@ impl Names {
         }
         Self { kind, list }
     }
+    /// `an asset`, `a place`.
+    fn one(&self) -> String {
+        let article = if self.kind.starts_with('a') { "an" } else { "a" };
+        format!("{article} {}", self.kind)
+    }
     pub fn name(&self, index: usize) -> &str {
         &self.list[index]
     }
     /// The index that this text names.
     pub fn find(&self, node: &Node<'_>) -> Option<u16> {
-        let said = node.text(&format!("the name of a {}, in quotes", self.kind))?;
+        let said = node.text(&format!("the name of {}, in quotes", self.one()))?;
         self.find_text(node.src, node.span(), said)
     }
     pub fn find_text(
@@ -55,7 +60,7 @@ impl Names {
             Some(n) => format!("did you mean `{n}`?"),
             None => format!("known {}s: {}", self.kind, join_or_none(known)),
         };
-        let rule = format!("`{said}` must be a {} of the site file, and there is none", self.kind);
+        let rule = format!("`{said}` must be {} of the site file, and there is none", self.one());
         src.fault(codes::UNKNOWN_NAME, at, None, rule, remedy);
         None
     }
@@ -71,6 +76,7 @@ impl Names {
                     format!("a {} must not be listed twice here", self.kind),
                     "take the second one out",
                 );
+                continue;
             }
             found.push(i);
         }
@@ -107,7 +113,7 @@ fn suggest_name(said: &str) -> String {
 
 /// The known word nearest to `said`, if it is near enough to be a slip; the first on a tie.
 pub(crate) fn nearest<'a>(said: &str, known: impl Iterator<Item = &'a str>) -> Option<&'a str> {
-    let reach = (said.chars().count() / 3).clamp(1, 4);
+    let reach = said.chars().count().div_ceil(3).clamp(1, 4);
     known
         .map(|k| (edits(said, k), k))
         .filter(|(d, _)| *d <= reach)

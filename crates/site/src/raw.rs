@@ -42,10 +42,13 @@ impl Source<'_> {
         let (table, errors) = DeTable::parse_recoverable(self.text);
         for e in &errors {
             let at = e.span().unwrap_or(0..0);
+            // The grammar's own span may be empty, so the value shown is the line.
+            let start = self.text[..at.start].rfind('\n').map_or(0, |n| n + 1);
+            let line = self.text[start..].lines().next().unwrap_or_default().trim().to_owned();
             self.fault(
                 codes::SYNTAX,
                 at,
-                None,
+                Some(line),
                 format!("the file must be TOML, but here: {}", e.message()),
                 "mend the line; text needs quotes, a key comes once, a list needs commas",
             );
@@ -296,8 +299,10 @@ impl<'a> Table<'a> {
                 Some(n) => format!("did you mean `{n}`? else take the line out"),
                 None => format!("take it out; known here: {}", asked.join(", ")),
             };
-            let rule =
-                format!("{} has no key `{key}`; nothing is passed over in silence", self.what);
+            let rule = format!(
+                "there is no key `{key}` in {}; nothing is passed over in silence",
+                self.what
+            );
             self.src.fault(codes::UNKNOWN_KEY, at, None, rule, remedy);
         }
     }
