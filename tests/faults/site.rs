@@ -9,12 +9,17 @@ use tempfile::TempDir;
 
 use super::site_rows::{ROWS, Wrong};
 
+/// A folder of this repository.
+pub fn folder(path: &str) -> PathBuf {
+    Path::new(env!("CARGO_MANIFEST_DIR")).join("..").join(path)
+}
+
 fn tarrow() -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("../deploy/sites/tarrow-works")
+    folder("deploy/sites/tarrow-works")
 }
 
 /// A copy of the good site with changes, each of a text that stands there at least once.
-fn changed(changes: &[(&str, &str, &str)]) -> TempDir {
+pub fn changed(changes: &[(&str, &str, &str)]) -> TempDir {
     let dir = tempfile::tempdir().unwrap();
     for file in ["site.toml", "licence.toml"] {
         let mut text = fs::read_to_string(tarrow().join(file)).unwrap();
