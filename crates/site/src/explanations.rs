@@ -6,7 +6,7 @@ pub(crate) const TABLE: &[(Code, &str, &str)] = &[
     (
         READ,
         "a file cannot be read",
-        "A site is a folder that holds site.toml and licence.toml, both UTF-8 text of at most 1 MiB. \
+        "A site is a folder that holds site.toml and licence.toml, both UTF-8 text of at most 256 KiB. \
       The path may name the folder or its site.toml. Nothing is started from half a site.",
     ),
     (

@@ -44,8 +44,9 @@ pub use report::{Fault, Report};
 use crate::raw::Source;
 use crate::report::fault_at;
 
-/// The largest file that is read, bytes.
-const FILE_BYTES_MAX: u64 = 1 << 20;
+/// The largest file that is read, bytes: twenty times the example, and small enough that a file
+/// in which every line is wrong is still reported in a moment.
+const FILE_BYTES_MAX: u64 = 1 << 18;
 
 /// Reads and checks a site. `path` is its folder, or the `site.toml` in it; the licence is the
 /// `licence.toml` beside that.

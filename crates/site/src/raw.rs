@@ -43,7 +43,9 @@ impl Source<'_> {
         for e in &errors {
             let at = e.span().unwrap_or(0..0);
             // The grammar's own span may be empty, so the value shown is the line.
-            let start = self.text[..at.start].rfind('\n').map_or(0, |n| n + 1);
+            let start = self.text[..self.text.floor_char_boundary(at.start)]
+                .rfind('\n')
+                .map_or(0, |n| n + 1);
             let line = self.text[start..].lines().next().unwrap_or_default().trim().to_owned();
             self.fault(
                 codes::SYNTAX,

@@ -26,6 +26,9 @@ pub struct Fault {
     at: Range<usize>,
 }
 
+/// How many faults the form for people shows; nobody mends more at once.
+const SHOWN_MAX: usize = 50;
+
 /// Every fault of every file of a site, in the order of the files and of their lines.
 #[derive(Clone, PartialEq, Debug, Serialize)]
 pub struct Report {
@@ -72,8 +75,11 @@ impl Report {
 impl fmt::Display for Report {
     /// Each fault with its line and a caret, then how many there were.
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        for fault in &self.faults {
+        for fault in self.faults.iter().take(SHOWN_MAX) {
             writeln!(f, "{}\n", self.render(fault))?;
+        }
+        if self.faults.len() > SHOWN_MAX {
+            writeln!(f, "... and {} more\n", self.faults.len() - SHOWN_MAX)?;
         }
         write!(
             f,
@@ -87,15 +93,15 @@ impl std::error::Error for Report {}
 
 /// The part of `at` that lies on its first line, so that a table is marked by its header.
 fn first_line(text: &str, at: &Range<usize>) -> Range<usize> {
-    let start = at.start.min(text.len());
-    let end = at.end.clamp(start, text.len());
+    let start = text.floor_char_boundary(at.start);
+    let end = text.floor_char_boundary(at.end).max(start);
     let stop = text[start..end].find('\n').map_or(end, |n| start + n);
     start..stop.max(start)
 }
 
 /// Line and column, both from 1, of a byte offset.
 fn line_column(text: &str, offset: usize) -> (usize, usize) {
-    let before = &text[..offset.min(text.len())];
+    let before = &text[..text.floor_char_boundary(offset)];
     let line_start = before.rfind('\n').map_or(0, |n| n + 1);
     (before.matches('\n').count() + 1, before[line_start..].chars().count() + 1)
 }
