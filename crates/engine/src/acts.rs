@@ -4,7 +4,7 @@ use model::AssetId;
 
 use crate::decide;
 use crate::state::State;
-use crate::{Act, ActKind, Effects, Entry, Mode, StandingAuthorisation, Stamp, drive};
+use crate::{Act, ActKind, Effects, Entry, Mode, Stamp, StandingAuthorisation, drive};
 
 pub(crate) fn take(state: &mut State, stamp: &Stamp, act: Act, effects: &mut Effects) {
     let answer = check(&act).and_then(|()| apply(state, stamp, &act, effects));

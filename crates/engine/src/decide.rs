@@ -64,8 +64,7 @@ pub fn decide(state: &State, stamp: &Stamp, asset: AssetId) -> Decision {
     let mut causes = Vec::new();
     people(state, stamp, asset, &mut causes);
     let goal = goal(state, stamp, asset, &mut causes);
-    let mut decision =
-        Decision { asset, goal, causes, guarded: None, forced: false };
+    let mut decision = Decision { asset, goal, causes, guarded: None, forced: false };
     let active = state.active(asset);
     if let Some(goal) = goal {
         if !goal.hand {
@@ -95,12 +94,7 @@ fn people(state: &State, stamp: &Stamp, asset: AssetId, causes: &mut Vec<Cause>)
 }
 
 /// What is asked for; when nothing is, the cause says when something will be.
-fn goal(
-    state: &State,
-    stamp: &Stamp,
-    asset: AssetId,
-    causes: &mut Vec<Cause>,
-) -> Option<Goal> {
+fn goal(state: &State, stamp: &Stamp, asset: AssetId, causes: &mut Vec<Cause>) -> Option<Goal> {
     if let Some((setting, _)) = state.assets[asset.index()].hand {
         return hand_goal(state, asset, setting, causes);
     }
@@ -188,13 +182,7 @@ pub fn slot_words(why: &SlotReason) -> &'static str {
 }
 
 /// Mode, the operator's yes, and being armed: what the program needs and a person in hand does not.
-fn program(
-    state: &State,
-    asset: AssetId,
-    goal: &Goal,
-    active: bool,
-    causes: &mut Vec<Cause>,
-) {
+fn program(state: &State, asset: AssetId, goal: &Goal, active: bool, causes: &mut Vec<Cause>) {
     match state.mode {
         Mode::Observe => {
             let is = Is::Words("observe".to_owned());
@@ -319,9 +307,8 @@ fn assisted_for(state: &State, stamp: &Stamp, asset: AssetId, wanted: bool) -> O
 pub(crate) fn wants_pump(state: &State, stamp: &Stamp, gate: AssetId) -> bool {
     let Some(no) = state.outlet_no(gate) else { return false };
     let Some(plan) = &state.plans[no] else { return false };
-    let runs = |p: &AssetId| {
-        plan.slot_at(*p, stamp.utc).is_some_and(|s| s.setpoint == Setpoint::Running)
-    };
+    let runs =
+        |p: &AssetId| plan.slot_at(*p, stamp.utc).is_some_and(|s| s.setpoint == Setpoint::Running);
     state.site.outlets[no].pumps.iter().any(runs)
 }
 
@@ -336,9 +323,9 @@ fn finding_cause(state: &State, asset: AssetId, f: &interlock::Finding) -> Cause
         Subject::Inner(n) => levels
             .and_then(|l| l.get(usize::from(n)))
             .map_or(About::Position(asset), |s| About::Signal(*s)),
-        Subject::Outer => outlet
-            .and_then(|o| o.outer_signal)
-            .map_or(About::Position(asset), About::Signal),
+        Subject::Outer => {
+            outlet.and_then(|o| o.outer_signal).map_or(About::Position(asset), About::Signal)
+        }
         Subject::Way => outlet.map_or(About::Position(asset), |o| About::Position(o.gate)),
         Subject::Asset => match f.id {
             Id::LockedOut => About::Lock(asset),

@@ -130,9 +130,9 @@ fn inflow(storage: &model::Storage, span: &Window) -> Option<Series> {
 fn available(state: &State, stamp: &Stamp, asset: AssetId) -> bool {
     let a = &state.assets[asset.index()];
     let spec = state.site.asset(asset);
-    let remote = spec.local.is_none_or(|s| {
-        state.validator.state(s, stamp.utc).now().is_some_and(|local| local < 0.5)
-    });
+    let remote = spec
+        .local
+        .is_none_or(|s| state.validator.state(s, stamp.utc).now().is_some_and(|local| local < 0.5));
     let free = a.locked_by.is_none() && a.tripped.is_none() && a.hand.is_none();
     free && a.hold_until.is_none()
         && remote
@@ -188,9 +188,8 @@ pub(crate) fn wake_at(state: &State, stamp: &Stamp) -> Mono {
     };
     let at = |utc: Utc| stamp.boot + (utc - stamp.utc);
     for asset in &state.site.assets {
-        let moving = state.assets[asset.id.index()].command.is_some_and(|c| {
-            c.phase != Phase::Confirmed
-        });
+        let moving =
+            state.assets[asset.id.index()].command.is_some_and(|c| c.phase != Phase::Confirmed);
         if moving {
             sooner(stamp.boot + Span::seconds(15));
         }

@@ -98,10 +98,11 @@ pub struct Slot {
 pub enum Setpoint {
     /// Gate shut.
     Shut,
-    /// Gate opened so far that this flow leaves; `opening` is the planner's model of how far.
+    /// Gate opened so far that this flow leaves. `openings` is the planner's model of how far, at
+    /// 1/5, 2/5, 3/5, 4/5 and 5/5 of the target, so that whoever ramps need know no hydraulics.
     Release {
         target: CubicMetresPerSecond,
-        opening: Percent,
+        openings: [Percent; 5],
     },
     Stopped,
     Running,
