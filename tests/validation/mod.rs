@@ -3,3 +3,5 @@
 mod structures;
 mod structures_pumps;
 mod structures_table;
+
+mod tide;
