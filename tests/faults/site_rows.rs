@@ -149,6 +149,8 @@ pub const ROWS: &[Wrong] = wrong! {
         "S028" at "  [\"MV2\"", "\"MV2\""; "must be a constituent"; "did you mean"
     "a constituent twice" SITE: "[\"NU2\", \"0.05 m\", \"180 deg\"]" => "[\"N2\", \"0.05 m\", \"180 deg\"]";
         "S029" at "  [\"N2\", \"0.05 m\"", "\"N2\""; "N2 must stand once"; "take one of its rows out"
+    "a constituent twice under two names" SITE: "[\"NU2\", \"0.05 m\", \"180 deg\"]" => "[\"LAM2\", \"0.05 m\", \"180 deg\"], [\"LAMBDA2\", \"0.05 m\", \"180 deg\"]";
+        "S029" at "  [\"LAM2\"", "\"LAMBDA2\""; "must stand once in the constants"; "take one of its rows out"
     "a phase lag beyond the circle" SITE: "[\"O1\",  \"0.07 m\", \"350 deg\"]" => "[\"O1\",  \"0.07 m\", \"-10 deg\"]";
         "S030" at "  [\"O1\"", "\"-10 deg\""; "from 0 up to but not including 360"; "\"350 deg\""
     "no M2" SITE: "  [\"M2\",  \"3.05 m\", \"170 deg\"],\n" => "";

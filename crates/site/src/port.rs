@@ -54,7 +54,9 @@ fn constants(whole: &Node<'_>, rows: &[Node<'_>]) -> Option<Vec<PortConstant>> {
         };
         list.push(c);
     }
-    let m2 = list.iter().any(|c| c.name == "M2" && c.amplitude.get() >= M2_AMPLITUDE_M_MIN);
+    let m2 = list
+        .iter()
+        .any(|c| constituents::same(&c.name, "M2") && c.amplitude.get() >= M2_AMPLITUDE_M_MIN);
     if sound && !m2 {
         return whole.fault(
             codes::NO_M2,
@@ -69,34 +71,34 @@ fn constant(row: &Node<'_>, before: &[PortConstant]) -> Option<PortConstant> {
     let [name, amplitude, phase] = row.row::<3>(ROW)?;
     let amplitude = amplitude.quantity(&LENGTH, 0.0, AMPLITUDE_M_MAX);
     let phase = phase_lag(&phase);
-    let known = name.text("\"M2\"").and_then(|said| constituent(&name, said));
-    let canonical = known?;
-    if before.iter().any(|c| constituents::canonical(&c.name) == Some(canonical)) {
+    let said = name.text("\"M2\"").and_then(|said| constituent(&name, said))?;
+    if before.iter().any(|c| constituents::same(&c.name, said)) {
         return name.fault(
             codes::CONSTITUENT_TWICE,
-            format!("{canonical} must stand once in the constants"),
+            format!("{said} must stand once in the constants, under whatever name"),
             "take one of its rows out, after checking which is right",
         );
     }
     Some(PortConstant {
-        name: canonical.to_owned(),
+        name: said.to_owned(),
         amplitude: Metres::of(amplitude?),
         phase_lag_greenwich_deg: phase?,
     })
 }
 
-fn constituent(node: &Node<'_>, said: &str) -> Option<&'static str> {
-    constituents::canonical(said).or_else(|| {
-        let remedy = match nearest(said, constituents::names()) {
-            Some(n) => format!("did you mean {n:?}?"),
-            None => "check the name in the list that the constants came from".to_owned(),
-        };
-        node.fault(
-            codes::CONSTITUENT,
-            format!("{said:?} must be a constituent that this program can reckon"),
-            remedy,
-        )
-    })
+fn constituent<'a>(node: &Node<'a>, said: &'a str) -> Option<&'a str> {
+    if constituents::is_known(said) {
+        return Some(said);
+    }
+    let remedy = match nearest(said, constituents::usual()) {
+        Some(n) => format!("did you mean {n:?}?"),
+        None => "check the name in the list that the constants came from".to_owned(),
+    };
+    node.fault(
+        codes::CONSTITUENT,
+        format!("{said:?} must be a constituent that this program can reckon"),
+        remedy,
+    )
 }
 
 /// Greenwich phase lag from 0 up to 360 degrees.
