@@ -20,14 +20,14 @@ fn tarrow() -> PathBuf {
 
 /// A copy of the good site with changes, each of a text that stands there at least once.
 pub fn changed(changes: &[(&str, &str, &str)]) -> TempDir {
-    let dir = tempfile::tempdir().unwrap();
+    let dir = tempfile::tempdir().expect("a temporary folder");
     for file in ["site.toml", "licence.toml"] {
-        let mut text = fs::read_to_string(tarrow().join(file)).unwrap();
+        let mut text = fs::read_to_string(tarrow().join(file)).expect("the good site");
         for (_, find, replace) in changes.iter().filter(|c| c.0 == file) {
             assert!(text.contains(find), "{find:?} does not stand in {file}");
             text = text.replacen(find, replace, 1);
         }
-        fs::write(dir.path().join(file), text).unwrap();
+        fs::write(dir.path().join(file), text).expect("a file in a temporary folder");
     }
     dir
 }
@@ -45,7 +45,7 @@ fn misses(row: &Wrong, dir: &Path, report: &Report) -> Vec<String> {
         return vec![format!("one fault was expected:\n{report}")];
     };
     let path = dir.join(row.file);
-    let text = fs::read_to_string(&path).unwrap();
+    let text = fs::read_to_string(&path).expect("the changed file");
     let line = text.lines().nth(fault.line - 1).unwrap_or_default();
     let place: String = line.chars().skip(fault.column - 1).collect();
     // Something missing has no text, and a fault of grammar shows its whole line.

@@ -28,11 +28,12 @@ fn published(station: &str) -> Vec<Constant> {
 
 fn predictor(constants: &[Constant]) -> Predictor {
     let list: Vec<_> = constants.iter().map(|c| (c.0.as_str(), c.1, c.2)).collect();
-    Predictor::new(&Constants::new(0.0, Nodal::MidYear, &list).unwrap())
+    let port = Constants::new(0.0, Nodal::MidYear, &list);
+    Predictor::new(&port.expect("published constants are sound"))
 }
 
 fn m2_phase_deg(constants: &[Constant]) -> f64 {
-    constants.iter().find(|c| c.0 == "M2").unwrap().2
+    constants.iter().find(|c| c.0 == "M2").expect("a published set has M2").2
 }
 
 /// Source: NOAA/NOS CO-OPS, accepted harmonic constants of station 8557380, Lewes, Delaware.
