@@ -1,8 +1,6 @@
 //! The shared clock mapping. The plant is a device with a clock of its own, as a controller has;
 //! this file reads it, and no other in this crate.
 
-use std::time::Duration;
-
 use rustix::time::{ClockId, clock_gettime};
 use units::{Mono, Span, Utc};
 
@@ -36,11 +34,6 @@ impl ClockMap {
             Utc::from_micros(self.sim_utc_origin_us) + Span::micros((passed_ns / 1_000) as i64);
         (utc, Mono::from_nanos(self.sim_boot_origin_ns.saturating_add(passed_ns)))
     }
-    /// How long a simulated span lasts in real time; a negative one not at all.
-    pub fn real_length(&self, span: Span) -> Duration {
-        let micros = span.as_micros().max(0).unsigned_abs();
-        Duration::from_micros(micros / u64::from(self.speed.max(1)))
-    }
     /// The boot clock's reading at an instant of UTC, before or after now.
     pub fn boot_at(&self, t: Utc) -> Mono {
         Mono::from_nanos(self.sim_boot_origin_ns) + (t - Utc::from_micros(self.sim_utc_origin_us))
@@ -69,7 +62,6 @@ mod tests {
         let (u1, b1) = fast.now();
         assert!(u1 - u0 >= real_passed * 599);
         assert!(((u1 - u0) - b1.since(b0)).abs() <= Span::micros(1));
-        assert_eq!(fast.real_length(Span::minutes(10)), Duration::from_secs(1));
         assert_eq!(fast.boot_at(Utc::from_micros(1_001)), Mono::from_nanos(1_005));
     }
 }

@@ -26,6 +26,8 @@ pub enum SimulationError {
         name: String,
         rule: &'static str,
     },
+    /// The adapter's loop ended badly.
+    Sdk(sdk::SdkError),
     /// The adapter and the plant do not understand each other.
     Link(String),
 }
@@ -46,6 +48,7 @@ impl fmt::Display for SimulationError {
             Self::File { what, path, .. } => write!(f, "{what} {}", path.display()),
             Self::AlreadyRunning(p) => write!(f, "a plant already works in {}", p.display()),
             Self::Setting { name, rule } => write!(f, "setting {name} must be {rule}"),
+            Self::Sdk(_) => f.write_str("the adapter of the simulated plant ended"),
             Self::Link(why) => write!(f, "the link to the plant: {why}"),
         }
     }
@@ -55,6 +58,7 @@ impl std::error::Error for SimulationError {
     fn source(&self) -> Option<&(dyn std::error::Error + 'static)> {
         match self {
             Self::Plant(e) => Some(e),
+            Self::Sdk(e) => Some(e),
             Self::File { source, .. } => Some(source),
             _ => None,
         }

@@ -9,8 +9,8 @@ use units::{Mono, Utc};
 use crate::ahead::{MARGIN, water_from};
 use crate::lines::Lines;
 use crate::resume::last_state;
-use crate::wire::{Answer, Ask, Driven, Read, RestWord, Value};
-use crate::works::{Names, plant_config, rest_do};
+use crate::wire::{Answer, Ask, Driven, Read, RestWord, Rests, Value};
+use crate::works::{Names, plant_config};
 use crate::{ClockMap, SimulationError};
 
 /// The plant, its names and its record.
@@ -125,8 +125,12 @@ impl Keeper {
         let driven = self.names.assets.iter().map(|a| Driven {
             point: a.point.clone(),
             gate: a.gate,
-            lease_ns: a.lease_ns,
-            rest: RestWord::of(rest_do(a.rest)),
+            rest: Rests {
+                lease_out: RestWord::of(a.rest.lease_out),
+                input_end: RestWord::of(a.rest.input_end),
+                trip: RestWord::of(a.rest.trip),
+                stop: RestWord::of(a.rest.stop),
+            },
         });
         let read = self.names.signals.iter().map(|s| Read {
             point: s.point.clone(),

@@ -2,7 +2,7 @@
 //!
 //! The simulated plant and its adapter, carried by the main binary as two processes. The plant
 //! ([`run_plant`]) is the equipment: it holds the leases, moves with simulated time and writes its
-//! own record, and lives on when the daemon or the adapter dies. The adapter (still to come)
+//! own record, and lives on when the daemon or the adapter dies. The adapter ([`run_adapter`])
 //! speaks the adapter protocol to the daemon and a small line protocol of its own to the plant.
 //!
 //! It deliberately has no part in any decision, reads no licence and no plan, and never touches the
@@ -20,17 +20,23 @@
 //! # }
 //! ```
 
+mod adapter;
 mod ahead;
 mod clock;
 mod error;
 mod keeper;
 mod lines;
+mod link;
 mod process;
 mod resume;
+mod settings;
 mod socket;
+mod start;
+mod station;
 mod wire;
 mod works;
 
+pub use adapter::run_adapter;
 pub use clock::ClockMap;
 pub use error::SimulationError;
 pub use process::{PlantArgs, SOCKET, run_plant};

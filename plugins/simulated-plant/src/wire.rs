@@ -44,6 +44,8 @@ pub(crate) enum RestWord {
     Open,
     Stop,
     Hold,
+    /// The simulated plant has no local control of its own: it stays as it is.
+    HandToLocal,
 }
 
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
@@ -59,8 +61,16 @@ pub(crate) enum Answer {
 pub(crate) struct Driven {
     pub point: String,
     pub gate: bool,
-    pub lease_ns: u64,
-    pub rest: RestWord,
+    pub rest: Rests,
+}
+
+/// What an asset does by itself, one for each cause.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Serialize, Deserialize)]
+pub(crate) struct Rests {
+    pub lease_out: RestWord,
+    pub input_end: RestWord,
+    pub trip: RestWord,
+    pub stop: RestWord,
 }
 
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
@@ -83,15 +93,16 @@ impl RestWord {
             Self::Close => plant::RestDo::Close,
             Self::Open => plant::RestDo::Open,
             Self::Stop => plant::RestDo::Stop,
-            Self::Hold => plant::RestDo::Hold,
+            Self::Hold | Self::HandToLocal => plant::RestDo::Hold,
         }
     }
-    pub const fn of(action: plant::RestDo) -> Self {
+    pub const fn of(action: model::RestAction) -> Self {
         match action {
-            plant::RestDo::Close => Self::Close,
-            plant::RestDo::Open => Self::Open,
-            plant::RestDo::Stop => Self::Stop,
-            plant::RestDo::Hold => Self::Hold,
+            model::RestAction::Close => Self::Close,
+            model::RestAction::Open => Self::Open,
+            model::RestAction::Stop => Self::Stop,
+            model::RestAction::Hold => Self::Hold,
+            model::RestAction::HandToLocal => Self::HandToLocal,
         }
     }
 }

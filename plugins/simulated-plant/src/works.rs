@@ -1,17 +1,18 @@
 //! From a checked site to the plant that stands in for it, and between names and numbers.
 
 use model::{
-    AssetKind, Outlet, RestAction, SignalId, SimulatedFault, SimulatedFaultKind, Site, Storage,
+    AssetKind, Outlet, RestActions, SignalId, SimulatedFault, SimulatedFaultKind, Site, Storage,
 };
 use plant::{
     Beginning, Fault, FaultKind, GateConfig, InflowProfile, OutfallFigures, PlantConfig, Point,
-    PumpConfig, RestDo, SpillWeir, Truth, Water,
+    PumpConfig, SpillWeir, Truth, Water,
 };
 use structures::StorageCurve;
 use units::{Mono, Span, Utc, Window};
 
 use crate::SimulationError;
 use crate::ahead::water;
+use crate::wire::RestWord;
 
 /// The weir of a site file has a level and no more; these are the demonstration's own.
 const CREST_LENGTH_M: f64 = 6.0;
@@ -37,8 +38,7 @@ pub(crate) struct DrivenPoint {
     pub point: String,
     pub name: String,
     pub gate: bool,
-    pub lease_ns: u64,
-    pub rest: RestAction,
+    pub rest: RestActions,
 }
 
 #[derive(Clone, PartialEq, Debug)]
@@ -64,8 +64,7 @@ impl Names {
                 point: a.point.clone(),
                 name: a.name.clone(),
                 gate: matches!(a.kind, AssetKind::Gate(_)),
-                lease_ns: a.lease.as_micros().max(0).unsigned_abs() * 1_000,
-                rest: a.rest.lease_out,
+                rest: a.rest,
             }
         });
         let (mut signals, mut without_source) = (Vec::new(), Vec::new());
@@ -214,7 +213,7 @@ fn gate(site: &Site, outlet: &Outlet) -> Result<GateConfig, SimulationError> {
     let asset = site.asset(outlet.gate);
     match &asset.kind {
         AssetKind::Gate(g) => {
-            Ok(GateConfig { stroke: g.stroke, rest: rest_do(asset.rest.lease_out) })
+            Ok(GateConfig { stroke: g.stroke, rest: RestWord::of(asset.rest.lease_out).into_do() })
         }
         AssetKind::Pump(_) => {
             Err(SimulationError::NotSimulated(format!("its gate {} is a pump", asset.name)))
@@ -229,7 +228,7 @@ fn pumps(site: &Site, outlet: &Outlet) -> Result<Vec<PumpConfig>, SimulationErro
             AssetKind::Pump(p) => Ok(PumpConfig {
                 flow_m3_s: p.flow.get(),
                 power_kw: p.power.get(),
-                rest: rest_do(asset.rest.lease_out),
+                rest: RestWord::of(asset.rest.lease_out).into_do(),
             }),
             AssetKind::Gate(_) => {
                 Err(SimulationError::NotSimulated(format!("its pump {} is a gate", asset.name)))
@@ -237,16 +236,6 @@ fn pumps(site: &Site, outlet: &Outlet) -> Result<Vec<PumpConfig>, SimulationErro
         }
     };
     outlet.pumps.iter().map(pump).collect()
-}
-
-/// The simulated plant has no local control of its own: handing to local is staying as it is.
-pub(crate) const fn rest_do(action: RestAction) -> RestDo {
-    match action {
-        RestAction::Close => RestDo::Close,
-        RestAction::Open => RestDo::Open,
-        RestAction::Stop => RestDo::Stop,
-        RestAction::Hold | RestAction::HandToLocal => RestDo::Hold,
-    }
 }
 
 fn fault(names: &Names, f: &SimulatedFault) -> Result<Fault, SimulationError> {

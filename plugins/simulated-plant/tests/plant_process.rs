@@ -2,33 +2,18 @@
 //! own record on disk.
 #![allow(clippy::unwrap_used, reason = "a test stops where an assumption breaks")]
 
-use std::fs;
+mod common;
+
 use std::io::{BufRead, BufReader, Write};
 use std::os::unix::net::UnixStream;
-use std::path::{Path, PathBuf};
+use std::path::Path;
 use std::process::{Child, Command, Stdio};
 
 use serde_json::{Value, json};
 use simulated_plant::{ClockMap, SOCKET};
-use units::{Span, Utc};
+use units::Span;
 
-/// A folder of this test's own, removed at the end.
-struct Folder(PathBuf);
-
-impl Folder {
-    fn new(name: &str) -> Self {
-        let path = std::env::temp_dir().join(format!("tidereeve-{name}-{}", std::process::id()));
-        let _ = fs::remove_dir_all(&path);
-        fs::create_dir_all(&path).unwrap();
-        Self(path)
-    }
-}
-
-impl Drop for Folder {
-    fn drop(&mut self) {
-        let _ = fs::remove_dir_all(&self.0);
-    }
-}
+use common::{Folder, boot_ns, events, fast, site};
 
 /// A plant process that is killed when the test is over, however it ends.
 struct Plant {
@@ -43,13 +28,7 @@ impl Drop for Plant {
     }
 }
 
-fn fast(speed: u32) -> ClockMap {
-    let start = Utc::from_civil(2027, 3, 1, 8, 0, 0).unwrap();
-    ClockMap { sim_utc_origin_us: start.as_micros(), speed, ..ClockMap::real() }
-}
-
 fn command(folder: &Path, clock: &ClockMap) -> Command {
-    let site = Path::new(env!("CARGO_MANIFEST_DIR")).join("../../deploy/sites/tarrow-works");
     let numbers = [
         clock.real_boot_origin_ns.to_string(),
         clock.sim_boot_origin_ns.to_string(),
@@ -57,7 +36,7 @@ fn command(folder: &Path, clock: &ClockMap) -> Command {
         clock.speed.to_string(),
     ];
     let mut c = Command::new(env!("CARGO_BIN_EXE_simulated-plant"));
-    c.arg("plant").arg(site).arg(folder).args(numbers).stdout(Stdio::piped());
+    c.arg("plant").arg(site()).arg(folder).args(numbers).stdout(Stdio::piped());
     c
 }
 
@@ -98,17 +77,6 @@ impl Plant {
             "setting_percent": percent, "lease_end_ns": end}));
         (end, answer)
     }
-}
-
-/// The events of one kind in the record.
-fn events(folder: &Path, kind: &str) -> Vec<Value> {
-    let text = fs::read_to_string(folder.join("plant.jsonl")).unwrap();
-    let lines = text.lines().filter_map(|l| serde_json::from_str::<Value>(l).ok());
-    lines.filter_map(|l| l.get("event").cloned()).filter(|e| e["kind"] == kind).collect()
-}
-
-fn boot_ns(event: &Value) -> u64 {
-    event["boot_ns"].as_u64().unwrap()
 }
 
 #[test]

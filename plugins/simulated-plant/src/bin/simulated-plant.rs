@@ -1,17 +1,19 @@
-//! The plant as a program of its own, for tests and for trying an adapter host
-//! without the daemon. The daemon carries the same function in its own binary.
+//! The plant and its adapter as a program of their own, for tests and for trying an adapter host
+//! without the daemon. The daemon carries the same two functions in its own binary.
 
 use std::path::PathBuf;
 use std::process::ExitCode;
 
-use simulated_plant::{ClockMap, PlantArgs, SimulationError, run_plant};
+use simulated_plant::{ClockMap, PlantArgs, SimulationError, run_adapter, run_plant};
 
-const USAGE: &str = "simulated-plant plant SITE FOLDER [REAL_BOOT_NS SIM_BOOT_NS SIM_UTC_US SPEED]";
+const USAGE: &str = "simulated-plant adapter\n\
+    simulated-plant plant SITE FOLDER [REAL_BOOT_NS SIM_BOOT_NS SIM_UTC_US SPEED]";
 
 fn main() -> ExitCode {
     let words: Vec<String> = std::env::args().skip(1).collect();
     let words: Vec<&str> = words.iter().map(String::as_str).collect();
     let done = match words[..] {
+        ["adapter"] => run_adapter(),
         ["plant", site, folder] => plant(site, folder, ClockMap::real()),
         ["plant", site, folder, real_boot, sim_boot, sim_utc, speed] => {
             match clock(real_boot, sim_boot, sim_utc, speed) {
