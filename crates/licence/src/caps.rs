@@ -49,18 +49,24 @@ pub fn rounded(range: Metres, step: Metres) -> i64 {
 
 /// The rounded range in metres.
 pub(crate) fn rounded_m(range: Metres, rounding: &Rounding) -> Metres {
-    // Divide rather than multiply: 21 / 10 is 2.1 where 21 x 0.1 is not.
-    Metres::of(rounded(range, rounding.step) as f64 / (1.0 / rounding.step.get()).round())
+    let step_m = rounding.step.get();
+    let steps = rounded(range, rounding.step) as f64;
+    let steps_per_m = (1.0 / step_m).round();
+    // Divide where a metre has whole steps: 21 / 10 is 2.1 where 21 x 0.1 is not.
+    let whole = (steps_per_m * step_m - 1.0).abs() < 1e-9;
+    Metres::of(if whole { steps / steps_per_m } else { steps * step_m })
 }
 
-/// The band that the rounded range falls in; `None` below them all, which is nil.
+/// The band that the rounded range falls in, in whatever order they stand; `None` below them all,
+/// which is nil.
 pub(crate) fn band<'a>(
     rounding: &Rounding,
     bands: &'a [RangeBand],
     range: Metres,
 ) -> Option<&'a RangeBand> {
     let steps = rounded(range, rounding.step);
-    bands.iter().rev().find(|b| steps >= rounded(b.range_min, rounding.step))
+    let reached = bands.iter().filter(|b| steps >= rounded(b.range_min, rounding.step));
+    reached.max_by(|a, b| a.range_min.total_cmp(&b.range_min))
 }
 
 /// Caps over more than one tide that govern the asset, with what has gone into each already.

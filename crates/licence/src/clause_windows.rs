@@ -1,42 +1,51 @@
 //! The windows of a single clause over a forecast.
 
-use model::{Clause, ClauseKind, EdgeAnchor, Forecast, TideAnchor, TurnKind};
-use units::{Span, Window, Windows};
+use model::{Clause, ClauseKind, CurrentTurn, EdgeAnchor, Forecast, TideAnchor, TurnKind};
+use units::{Span, Utc, Window, Windows};
 
-/// Where one clause, by itself, lets water move; `None` for a clause that sets no window.
-pub(crate) struct ClauseWindows {
+/// Where one clause, by itself, lets water move.
+pub(crate) struct ClauseWindows<'a> {
     pub windows: Windows,
     pub anchor: EdgeAnchor,
-    pub time_sd: Span,
+    turns: &'a [CurrentTurn],
 }
 
-pub(crate) fn of(clause: &Clause, forecast: &Forecast) -> Option<ClauseWindows> {
+impl ClauseWindows<'_> {
+    /// One standard deviation of an edge of these windows: of the current's turn nearest to it, the
+    /// earlier of two; none for a predicted anchor.
+    pub(crate) fn time_sd(&self, at: Utc) -> Span {
+        let nearest = self.turns.iter().min_by_key(|t| ((t.at - at).abs(), t.at));
+        nearest.map_or(Span::ZERO, |t| t.time_sd)
+    }
+}
+
+/// `None` for a clause that sets no window, and for one that the forecast says nothing about.
+pub(crate) fn of<'a>(clause: &Clause, forecast: &'a Forecast) -> Option<ClauseWindows<'a>> {
     match &clause.kind {
         ClauseKind::TideWindow { place, anchor, from, to } => {
             let kind = match anchor {
                 TideAnchor::HighWater => TurnKind::High,
                 TideAnchor::LowWater => TurnKind::Low,
             };
-            let turns = forecast.place(*place).turns.iter().filter(|t| t.kind == kind);
+            let place = forecast.places.get(place.index())?;
+            let turns = place.turns.iter().filter(|t| t.kind == kind);
             let windows = turns.filter_map(|t| Window::new(t.at + *from, t.at + *to).ok());
-            Some(ClauseWindows {
-                windows: windows.collect(),
-                anchor: EdgeAnchor::Predicted,
-                time_sd: Span::ZERO,
-            })
+            let windows = windows.collect();
+            Some(ClauseWindows { windows, anchor: EdgeAnchor::Predicted, turns: &[] })
         }
         ClauseKind::CurrentSeaward { place, speed_min, .. } => {
-            let place = forecast.place(*place);
-            let current = place.current.as_ref();
-            // Without a modelled current, nothing is known to run seaward.
-            let windows = current.map_or(Windows::none(), |c| c.at_least(speed_min.get()));
-            let time_sd = place.current_turns.iter().map(|t| t.time_sd).max();
+            let place = forecast.places.get(place.index())?;
             Some(ClauseWindows {
-                windows,
+                windows: place.current.as_ref()?.at_least(speed_min.get()),
                 anchor: EdgeAnchor::Modelled,
-                time_sd: time_sd.unwrap_or(Span::ZERO),
+                turns: &place.current_turns,
             })
         }
         _ => None,
     }
+}
+
+/// Whether the clause is one that sets windows, readable or not.
+pub(crate) fn sets_windows(clause: &Clause) -> bool {
+    matches!(clause.kind, ClauseKind::TideWindow { .. } | ClauseKind::CurrentSeaward { .. })
 }

@@ -12,6 +12,9 @@ pub fn window(from_h: f64, to_h: f64) -> Window {
 }
 
 pub const GATE: AssetId = AssetId(0);
+pub const PUMP: AssetId = AssetId(1);
+pub const SAMPLER: SignalId = SignalId(1);
+pub const METER: SignalId = SignalId(2);
 const HALF_DAY_H: f64 = 12.42;
 
 pub fn clause(id: u16, number: &str, kind: ClauseKind) -> Clause {
@@ -93,6 +96,32 @@ pub fn permit() -> Vec<Clause> {
     ]
 }
 
+/// The whole of the permit: with a sampler that must be ready to begin, a current meter, and a pump
+/// that only the current and the ammonia concern.
+pub fn tarrow() -> Site {
+    let mut clauses = permit();
+    if let ClauseKind::CurrentSeaward { meter, .. } = &mut clauses[1].kind {
+        *meter = Some(METER);
+    }
+    clauses.push(clause(
+        7,
+        "2.1",
+        ClauseKind::SignalGate {
+            conditions: vec![SignalCondition {
+                signal: SAMPLER,
+                limit: 1.0,
+                sense: Sense::AtLeast,
+                age_max: Span::minutes(10),
+            }],
+            applies: Applies::ToStart,
+        },
+    ));
+    for n in [1, 6] {
+        clauses[n].governs.push(Governed { asset: PUMP, on_stale: OnStale::Hold });
+    }
+    site(clauses)
+}
+
 pub fn site(clauses: Vec<Clause>) -> Site {
     let day = window(-24.0 * 400.0, 24.0 * 400.0);
     Site {
@@ -145,6 +174,13 @@ pub fn forecast(ranges: &[f64]) -> Forecast {
         time_sd: Span::minutes(6),
         level_sd: Metres::of(0.1),
     };
+    let low = |k: usize| Turn {
+        kind: TurnKind::Low,
+        at: t(high(k) + 6.21),
+        level: Level::of(-3.0),
+        ..turn(k)
+    };
+    let turns: Vec<Turn> = (0..ranges.len()).flat_map(|k| [turn(k), low(k)]).collect();
     let tide = |(k, range): (usize, &f64)| Tide {
         number: k as i64,
         window: window(high(k) - 6.21, high(k) + 6.21),
@@ -166,13 +202,13 @@ pub fn forecast(ranges: &[f64]) -> Forecast {
         as_of: t(0.0),
         span,
         digest: 0,
-        port_turns: (0..ranges.len()).map(turn).collect(),
+        port_turns: turns.clone(),
         tides: ranges.iter().enumerate().map(tide).collect(),
         port_level: level.clone(),
         places: vec![PlaceForecast {
             place: PlaceId(0),
             method: Method::Differences,
-            turns: (0..ranges.len()).map(turn).collect(),
+            turns,
             level,
             current: Some(current.unwrap()),
             current_turns: current_turns.collect(),

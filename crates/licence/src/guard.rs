@@ -1,10 +1,14 @@
 //! The guard: every clause against live conditions and sums, at the moment of action.
+//!
+//! Each hold rests on one fact that could be otherwise: put what it must be in the place of what it
+//! is, and that hold is gone.
 
 use model::{
     About, Applies, AssetId, By, Cap, Cause, Clause, ClauseKind, Fact, Forecast, Is, Lawful,
-    MustBe, OnStale, Sense, SignalCondition, Site, Validated,
+    MustBe, OnStale, Quality, RangeBand, Rounding, Sense, SignalCondition, SignalId, Site,
+    Validated,
 };
-use units::{CubicMetres, CubicMetresPerSecond, Span, Utc, Window};
+use units::{CubicMetres, CubicMetresPerSecond, MetresPerSecond, Span, Utc, Window};
 
 use crate::caps::{band, governing, least};
 use crate::clause_windows;
@@ -21,20 +25,31 @@ pub enum Phase {
 #[derive(Clone, Copy, Debug)]
 pub struct Conditions<'a> {
     pub now: Utc,
-    /// In the order of `Site::signals`.
+    /// In the order of `Site::signals`; one that is missing here counts as never read.
     pub signals: &'a [Validated],
     pub forecast: Option<&'a Forecast>,
+    /// Only to say when the next window is; every clause is read anew.
     pub lawful: Option<&'a Lawful>,
     pub tallies: &'a Tallies,
     /// Pieces of the last hour with the mean flow in each, m3/s, oldest first.
     pub recent_flow: &'a [(Window, f64)],
 }
 
-/// All holds, and the caps that are left where there is none.
+impl Conditions<'_> {
+    fn signal(&self, id: SignalId) -> Validated {
+        self.signals.get(id.index()).copied().unwrap_or(Validated::NEVER)
+    }
+}
+
+/// All holds, and the caps as they stand now, each with the clause that sets it.
 #[derive(Clone, PartialEq, Debug, Default)]
 pub struct Guarded {
     pub causes: Vec<Cause>,
     pub flow_max: Option<Cap<CubicMetresPerSecond>>,
+    /// Greatest change of flow, m3/s a minute.
+    pub ramp_max_per_min: Option<Cap<CubicMetresPerSecond>>,
+    /// The least of what is left of the tide, of rolling spans and of the month; below zero where
+    /// more has gone than may.
     pub volume_left: Option<Cap<CubicMetres>>,
 }
 
@@ -51,7 +66,9 @@ impl Guarded {
         let left = max - used;
         self.volume_left = least(self.volume_left, Cap { max: left, clause: clause.id });
         if left.get() <= 0.0 {
-            self.hold(clause, about, Is::Number(used.get()), MustBe::AtMost(max.get()));
+            // Just under the cap and not at it: with the cap reached, nothing may follow.
+            let must = MustBe::AtMost(max.get().next_down());
+            self.hold(clause, about, Is::Number(used.get()), must);
         }
     }
     fn stale(&mut self, clause: &Clause, on_stale: OnStale, about: About, is: &str) {
@@ -66,25 +83,23 @@ impl Guarded {
     }
 }
 
-/// Reads every clause that governs the asset. All holds are listed, not the first.
+/// Reads every clause that governs the asset. All holds are listed, not the first, in the order of
+/// the licence; clause kinds that need a forecast hold without one, unless `on_stale` lets them.
 pub fn guard(site: &Site, c: &Conditions, asset: AssetId, phase: Phase) -> Guarded {
     let mut g = Guarded::default();
     for (clause, on_stale) in governing(site, asset) {
         match &clause.kind {
+            // The anchor is a prediction: there is nothing to fall back upon.
             ClauseKind::TideWindow { .. } => window(&mut g, clause, c, OnStale::Hold),
             ClauseKind::CurrentSeaward { speed_min, meter, .. } => {
-                let metered = meter.and_then(|m| Some((m, c.signals[m.index()].now()?)));
-                match metered {
-                    Some((_, v)) if v >= speed_min.get() => {}
-                    Some((m, v)) => {
-                        let must = MustBe::AtLeast(speed_min.get());
-                        g.hold(clause, About::Signal(m), Is::Number(v), must);
-                    }
-                    None => window(&mut g, clause, c, on_stale),
-                }
+                current(&mut g, clause, on_stale, *speed_min, *meter, c);
             }
-            ClauseKind::Rate { flow_max, averaging, .. } => {
+            ClauseKind::Rate { flow_max, averaging, ramp_max_per_min } => {
                 g.flow(clause, *flow_max);
+                if let Some(max) = *ramp_max_per_min {
+                    let cap = Cap { max, clause: clause.id };
+                    g.ramp_max_per_min = least(g.ramp_max_per_min, cap);
+                }
                 let mean = mean_flow(c.recent_flow, c.now, *averaging);
                 if mean > flow_max.get() {
                     let must = MustBe::AtMost(flow_max.get());
@@ -92,22 +107,10 @@ pub fn guard(site: &Site, c: &Conditions, asset: AssetId, phase: Phase) -> Guard
                 }
             }
             ClauseKind::VolumePerTide { rounding, bands } => {
-                let tide = c.forecast.and_then(|f| f.tide_at(c.now));
-                match tide {
-                    None => g.stale(clause, OnStale::Hold, About::Forecast, "no tide known"),
-                    Some(tide) => {
-                        let band = band(rounding, bands, tide.ebb_range);
-                        let max = band.map_or(CubicMetres::ZERO, |b| b.volume_max);
-                        let used = c.tallies.in_tide(tide.number);
-                        g.volume(clause, About::VolumeThisTide, used, max);
-                        if let Some(max) = band.and_then(|b| b.flow_max) {
-                            g.flow(clause, max);
-                        }
-                    }
-                }
+                this_tide(&mut g, clause, rounding, bands, c);
             }
             ClauseKind::RollingVolume { span, volume_max } => {
-                let used = c.tallies.rolling(*span, c.now);
+                let used = c.tallies.gone_since(c.now - *span);
                 g.volume(clause, About::VolumeRolling, used, *volume_max);
             }
             ClauseKind::MonthVolume { volume_max } => {
@@ -127,11 +130,36 @@ pub fn guard(site: &Site, c: &Conditions, asset: AssetId, phase: Phase) -> Guard
     g
 }
 
+/// A good meter beats the model, both ways.
+fn current(
+    g: &mut Guarded,
+    clause: &Clause,
+    on_stale: OnStale,
+    speed_min: MetresPerSecond,
+    meter: Option<SignalId>,
+    c: &Conditions,
+) {
+    match meter.and_then(|m| Some((m, c.signal(m).now()?))) {
+        Some((_, v)) if v >= speed_min.get() => {}
+        Some((m, v)) => {
+            let must = MustBe::AtLeast(speed_min.get());
+            g.hold(clause, About::Signal(m), Is::Number(v), must);
+        }
+        // The model says nothing outside the span that it was made for.
+        None if c.forecast.is_some_and(|f| !f.span.contains(c.now)) => {
+            g.stale(clause, on_stale, About::Forecast, "a forecast that does not reach to now");
+        }
+        None => window(g, clause, c, on_stale),
+    }
+}
+
 /// A clause that is a window: inside it now, or the next one is what the time must come to.
 fn window(g: &mut Guarded, clause: &Clause, c: &Conditions, on_stale: OnStale) {
-    let set = c.forecast.and_then(|f| clause_windows::of(clause, f));
-    let Some(set) = set else {
+    let Some(forecast) = c.forecast else {
         return g.stale(clause, on_stale, About::Forecast, "no forecast");
+    };
+    let Some(set) = clause_windows::of(clause, forecast) else {
+        return g.stale(clause, on_stale, About::Forecast, "nothing modelled for this clause");
     };
     if set.windows.contains(c.now) {
         return;
@@ -139,6 +167,35 @@ fn window(g: &mut Guarded, clause: &Clause, c: &Conditions, on_stale: OnStale) {
     match set.windows.next_after(c.now) {
         Some(next) => g.hold(clause, About::Now, Is::Instant(c.now), MustBe::Inside(*next)),
         None => g.stale(clause, OnStale::Hold, About::Forecast, "no window in the forecast"),
+    }
+}
+
+/// What is left of this tide; a nil tide holds until it is over.
+fn this_tide(
+    g: &mut Guarded,
+    clause: &Clause,
+    rounding: &Rounding,
+    bands: &[RangeBand],
+    c: &Conditions,
+) {
+    let Some(tide) = c.forecast.and_then(|f| f.tide_at(c.now)) else {
+        return g.stale(clause, OnStale::Hold, About::Forecast, "no tide known");
+    };
+    match band(rounding, bands, tide.ebb_range).filter(|b| b.volume_max.get() > 0.0) {
+        None => {
+            let cap = Cap { max: CubicMetres::ZERO, clause: clause.id };
+            g.volume_left = least(g.volume_left, cap);
+            let next = c.lawful.and_then(|l| l.next_after(tide.window.end() - Span::micros(1)));
+            let must = next.map_or(MustBe::After(tide.window.end()), |w| MustBe::Inside(w.window));
+            g.hold(clause, About::Now, Is::Instant(c.now), must);
+        }
+        Some(b) => {
+            let used = c.tallies.in_tide(tide.number);
+            g.volume(clause, About::VolumeThisTide, used, b.volume_max);
+            if let Some(max) = b.flow_max {
+                g.flow(clause, max);
+            }
+        }
     }
 }
 
@@ -150,9 +207,9 @@ fn signal(
     c: &Conditions,
 ) {
     let about = About::Signal(s.signal);
-    let reading = c.signals[s.signal.index()];
+    let reading = c.signal(s.signal);
     match reading.within(s.age_max) {
-        None => g.stale(clause, on_stale, about, reading.quality.words()),
+        None => g.stale(clause, on_stale, about, &unreadable(&reading, s.age_max)),
         Some(v) => {
             let (met, must) = match s.sense {
                 Sense::AtMost => (v <= s.limit, MustBe::AtMost(s.limit)),
@@ -162,6 +219,17 @@ fn signal(
                 g.hold(clause, about, Is::Number(v), must);
             }
         }
+    }
+}
+
+/// Why a reading does not count for a clause: its own fault, or its age, whose limit here is the
+/// clause's and not the signal's.
+fn unreadable(reading: &Validated, age_max: Span) -> String {
+    match (reading.quality, reading.good) {
+        (Quality::Good | Quality::Stale, Some(g)) => {
+            format!("{} old, over the clause's {age_max}", g.age)
+        }
+        (quality, _) => quality.words().to_owned(),
     }
 }
 

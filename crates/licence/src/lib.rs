@@ -1,9 +1,10 @@
 //! **When does the licence let water move, how much, and may it move now?**
 //!
-//! Reads clauses as data ([`model::Clause`]) three ways: [`lawful`] turns them into windows over a
-//! forecast; [`guard`] reads them against live conditions and sums at the moment of action; a
-//! [`Tallies`] keeps the sums. A window is necessary, never sufficient: only the guard lets a
-//! release begin or go on. It plans nothing, knows no hydraulics and commands nothing.
+//! Reads clauses as data ([`model::Clause`]) four ways: [`lawful`] turns them into windows over a
+//! forecast; [`guard`] reads them against live conditions and sums at the moment of action;
+//! [`Tallies`] keeps the sums; [`audit`] looks back over what was done. A window is necessary,
+//! never sufficient: only the guard lets a release begin or go on. It plans nothing, knows no
+//! hydraulics and commands nothing.
 //!
 //! An unmet, unreadable or stale clause is a hold, unless the clause itself says otherwise for the
 //! asset (`on_stale`). Windows are half-open: at the end exactly, it is shut.
@@ -19,12 +20,14 @@
 //! assert_eq!(rounded(Metres::of(2.15), Metres::of(0.1)), 22);
 //! ```
 
+mod audit;
 mod caps;
 mod clause_windows;
 mod guard;
 mod lawful;
 mod tallies;
 
+pub use audit::{Breach, Over, audit};
 pub use caps::{flow_cap, long_caps, ramp_cap, rounded};
 pub use guard::{Conditions, Guarded, Phase, guard};
 pub use lawful::lawful;

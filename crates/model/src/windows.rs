@@ -25,7 +25,8 @@ impl Lawful {
     }
 }
 
-/// One stretch, within one tide, with every cap that holds in it.
+/// One stretch with every cap that holds in it: within one tide where a clause counts by tides, and
+/// else by the tide that it begins in.
 #[derive(Clone, PartialEq, Debug)]
 pub struct LawfulWindow {
     pub tide: TideNumber,
