@@ -41,8 +41,9 @@ impl Validator {
         let tracks = vec![Track::default(); specs.len()];
         Self { specs, tracks }
     }
-    /// Takes a reading in; a signal that the site does not have is ignored, as is a reading no
-    /// younger than the last.
+    /// Takes a reading in at `now`. A signal that the site does not have is ignored, and so is a
+    /// sound reading no younger than the last. A reading that is not good never becomes the last
+    /// good value, but says why the signal is not good until the next sound one.
     pub fn take(&mut self, reading: &Reading, now: Utc) {
         let index = reading.signal.index();
         if let (Some(spec), Some(track)) = (self.specs.get(index), self.tracks.get_mut(index)) {
@@ -59,6 +60,13 @@ impl Validator {
     }
     /// Every signal, in the order of their ids.
     pub fn all(&self, now: Utc) -> Vec<Validated> {
-        self.specs.iter().zip(&self.tracks).map(|(s, t)| t.state(s, now)).collect()
+        let mut list = Vec::new();
+        self.all_into(now, &mut list);
+        list
+    }
+    /// As [`Validator::all`], into a list that the caller owns and uses again; what it held is gone.
+    pub fn all_into(&self, now: Utc, list: &mut Vec<Validated>) {
+        list.clear();
+        list.extend(self.specs.iter().zip(&self.tracks).map(|(s, t)| t.state(s, now)));
     }
 }

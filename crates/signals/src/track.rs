@@ -1,11 +1,18 @@
 //! One signal through time.
+//!
+//! A reading is looked at in this order; the first thing that is wrong names it:
+//! not a number, bad at its source, stamped ahead, not younger than the last (dropped in silence),
+//! out of range, too fast. Frozen and stale are seen when the signal is asked for.
+//!
+//! The first two count whatever the stamp says: a source may repeat its last time with a worse
+//! quality, and that must not be lost as a repetition.
 
 use model::{GoodValue, Quality, Reading, Signal, Validated};
 use units::{Span, Utc};
 
 /// A clock a little ahead of ours is forgiven; more is a reading from the future.
 const AHEAD_MAX: Span = Span::seconds(5);
-/// A jump that stands for this many readings is real and not a spike.
+/// A jump that stands for this many readings, one after the other, is real and not a spike.
 const SPIKE_READINGS: u32 = 3;
 
 #[derive(Clone, Copy, PartialEq, Debug, Default)]
@@ -34,21 +41,36 @@ struct Jump {
 
 impl Track {
     pub(crate) fn take(&mut self, spec: &Signal, r: &Reading, now: Utc) {
-        if r.at > now + AHEAD_MAX {
-            self.fault = Some(Quality::FromTheFuture);
-            return;
+        if self.last_at.is_some_and(|last| is_ahead(last, now)) {
+            // Our own clock went back: what was known is of a time that has not come. Without this,
+            // every true reading would be dropped as older until that time is reached again.
+            *self = Self::default();
         }
-        if self.last_at.is_some_and(|last| r.at <= last) {
-            return;
-        }
-        self.last_at = Some(r.at);
-        self.fault = fault_of(spec, r);
-        if self.fault.is_none() {
-            self.accept(spec, r);
+        match bad_in_itself(r).or(is_ahead(r.at, now).then_some(Quality::FromTheFuture)) {
+            Some(fault) => {
+                // A stamp ahead is not taken in, or it would make all that follow look old.
+                let taken = Some(r.at).filter(|at| !is_ahead(*at, now));
+                self.last_at = self.last_at.max(taken);
+                self.fail(fault);
+            }
+            None if self.last_at.is_some_and(|last| r.at <= last) => {}
+            None => {
+                self.last_at = Some(r.at);
+                self.judge(spec, r);
+            }
         }
     }
 
-    fn accept(&mut self, spec: &Signal, r: &Reading) {
+    fn fail(&mut self, fault: Quality) {
+        self.fault = Some(fault);
+        self.jump = None;
+    }
+
+    fn judge(&mut self, spec: &Signal, r: &Reading) {
+        if !(spec.value_min..=spec.value_max).contains(&r.value) {
+            return self.fail(Quality::OutOfRange);
+        }
+        self.fault = None;
         if let (Some(good), Some(rate)) = (self.good, spec.rate_max_per_s)
             && too_fast(good.value, good.at, r, rate)
             && !self.jump_stands(r, rate)
@@ -57,7 +79,7 @@ impl Track {
             return;
         }
         self.jump = None;
-        let same = self.good.filter(|g| g.value.to_bits() == r.value.to_bits());
+        let same = self.good.filter(|g| g.value == r.value);
         let since = same.map_or(r.at, |g| g.since);
         self.good = Some(Good { value: r.value, at: r.at, since });
     }
@@ -75,8 +97,10 @@ impl Track {
         let quality = match (self.fault, self.good) {
             (Some(fault), _) => fault,
             (None, None) => Quality::Missing,
+            // Our clock went back: how old it is cannot be said, and so it is not good.
+            (None, Some(g)) if is_ahead(g.at, now) => Quality::FromTheFuture,
             (None, Some(g)) if now - g.at > spec.age_max => Quality::Stale,
-            (None, Some(g)) if spec.frozen_after.is_some_and(|f| g.at - g.since > f) => {
+            (None, Some(g)) if spec.frozen_after.is_some_and(|f| g.at - g.since >= f) => {
                 Quality::Frozen
             }
             (None, Some(_)) => Quality::Good,
@@ -85,13 +109,16 @@ impl Track {
     }
 }
 
-fn fault_of(spec: &Signal, r: &Reading) -> Option<Quality> {
-    if !r.source_good {
-        Some(Quality::BadAtSource)
-    } else if !r.value.is_finite() {
+fn is_ahead(at: Utc, now: Utc) -> bool {
+    at > now + AHEAD_MAX
+}
+
+/// What is wrong with a reading whenever it was true.
+fn bad_in_itself(r: &Reading) -> Option<Quality> {
+    if !r.value.is_finite() {
         Some(Quality::NotANumber)
-    } else if r.value < spec.value_min || r.value > spec.value_max {
-        Some(Quality::OutOfRange)
+    } else if !r.source_good {
+        Some(Quality::BadAtSource)
     } else {
         None
     }
@@ -102,98 +129,4 @@ fn too_fast(from: f64, at: Utc, r: &Reading, rate_max_per_s: f64) -> bool {
 }
 
 #[cfg(test)]
-mod tests {
-    use proptest::prelude::*;
-
-    use super::*;
-    use crate::Validator;
-    use model::{AdapterId, SignalId};
-
-    fn level() -> Signal {
-        Signal {
-            id: SignalId(0),
-            name: "level".to_owned(),
-            adapter: AdapterId(0),
-            point: "level".to_owned(),
-            unit: "m".to_owned(),
-            value_min: 0.0,
-            value_max: 10.0,
-            rate_max_per_s: Some(0.01),
-            age_max: Span::seconds(60),
-            frozen_after: Some(Span::minutes(30)),
-        }
-    }
-
-    fn at(s: i64) -> Utc {
-        Utc::EPOCH + Span::seconds(s)
-    }
-
-    fn fed(list: &[(i64, f64)]) -> Validator {
-        let mut v = Validator::for_signals(vec![level()]);
-        for (s, value) in list {
-            let r = Reading { signal: SignalId(0), value: *value, source_good: true, at: at(*s) };
-            v.take(&r, at(*s));
-        }
-        v
-    }
-
-    fn quality(v: &Validator, s: i64) -> Quality {
-        v.state(SignalId(0), at(s)).quality
-    }
-
-    #[test]
-    fn each_fault_has_its_own_name() {
-        assert_eq!(quality(&fed(&[]), 0), Quality::Missing);
-        assert_eq!(quality(&fed(&[(0, f64::NAN)]), 0), Quality::NotANumber);
-        assert_eq!(quality(&fed(&[(0, 10.1)]), 0), Quality::OutOfRange);
-        assert_eq!(quality(&fed(&[(0, 5.0)]), 60), Quality::Good);
-        assert_eq!(quality(&fed(&[(0, 5.0)]), 61), Quality::Stale);
-        let mut v = fed(&[(0, 5.0)]);
-        let bad = Reading { signal: SignalId(0), value: 5.0, source_good: false, at: at(10) };
-        v.take(&bad, at(10));
-        assert_eq!(quality(&v, 10), Quality::BadAtSource);
-        v.take(&Reading { at: at(100), source_good: true, ..bad }, at(20));
-        assert_eq!(quality(&v, 20), Quality::FromTheFuture);
-    }
-
-    #[test]
-    fn a_value_that_never_moves_is_frozen_and_one_that_moves_a_little_is_not() {
-        let flat: Vec<_> = (0..62).map(|n| (n * 30, 5.0)).collect();
-        assert_eq!(quality(&fed(&flat), 61 * 30), Quality::Frozen);
-        let alive: Vec<_> = (0..62).map(|n| (n * 30, 5.0 + 1e-6 * n as f64)).collect();
-        assert_eq!(quality(&fed(&alive), 61 * 30), Quality::Good);
-    }
-
-    #[test]
-    fn a_spike_is_held_back_and_a_step_that_stands_is_believed() {
-        let spike = fed(&[(0, 5.0), (10, 7.0)]);
-        assert_eq!(quality(&spike, 10), Quality::TooFast);
-        assert_eq!(quality(&fed(&[(0, 5.0), (10, 7.0), (20, 5.05)]), 20), Quality::Good);
-        let step = fed(&[(0, 5.0), (10, 7.0), (20, 7.01), (30, 7.02)]);
-        assert_eq!(step.state(SignalId(0), at(30)).now(), Some(7.02));
-    }
-
-    #[test]
-    fn an_older_or_repeated_reading_changes_nothing() {
-        let v = fed(&[(20, 5.0), (10, 5.05), (20, 5.1)]);
-        assert_eq!(v.state(SignalId(0), at(20)).now(), Some(5.0));
-    }
-
-    proptest! {
-        #![proptest_config(ProptestConfig {
-            failure_persistence: None, ..ProptestConfig::default()
-        })]
-        #[test]
-        fn prop_nothing_but_a_number_in_range_is_ever_good(
-            list in prop::collection::vec((0..4000_i64, prop_oneof![
-                -5.0..15.0_f64, Just(f64::NAN), Just(f64::NEG_INFINITY)
-            ]), 0..60),
-            ask in 0..5000_i64,
-        ) {
-            let v = fed(&list);
-            if let Some(value) = v.state(SignalId(0), at(ask)).good.map(|g| g.value) {
-                prop_assert!((0.0..=10.0).contains(&value));
-            }
-        }
-    }
-}
+mod tests;
