@@ -86,7 +86,9 @@ fn a_source_that_says_bad_is_believed_even_with_an_old_stamp() {
         let mut v = fed(&[(20, 5.0)]);
         v.take(&bad(stamp), at(30));
         assert_eq!(quality(&v, 30), Quality::BadAtSource, "stamp {stamp}");
-        // The next sound reading ends it.
+        // A sound one from before the last does not end it; the next sound reading does.
+        v.take(&reading(15, 5.0), at(31));
+        assert_eq!(quality(&v, 31), Quality::BadAtSource, "stamp {stamp}");
         v.take(&reading(40, 5.1), at(40));
         assert_eq!(good(&v, 40), Some(5.1));
     }
