@@ -1,32 +1,28 @@
-//! The plan put together: slots without gaps, reasons, releases, shortfalls.
+//! The plan put together: slots without gaps, releases, levels, shortfalls.
 
 use model::{
-    AssetId, AssetPlan, ClauseId, FlowLimit, Plan, PlanRequest, PlannedRelease, Setpoint,
-    Shortfall, Site, Slot, SlotReason,
+    AssetId, AssetPlan, ClauseId, Plan, PlanRequest, PlannedRelease, Setpoint, Shortfall, Site,
+    Slot, SlotReason, TideNumber,
 };
-use units::{CubicMetres, CubicMetresPerSecond, Digest, Percent, Series, Span, Utc, Window};
+use units::{CubicMetres, CubicMetresPerSecond, Percent, Series, Utc, Window};
 
-use crate::dp::{GRAVITY, SHUT};
-use crate::forward::{Limited, Path, Step};
-use crate::problem::{PlanError, Problem, SLOT};
+use crate::digest::digest;
+use crate::error::PlanError;
+use crate::forward::{Does, Idle, Path, Step};
+use crate::problem::{Problem, SLOT};
+use crate::reasons;
 use crate::repair::feasible;
-use crate::windows::ReleaseWindow;
+use crate::throttle::Bound;
 
-/// Plans one outlet. Pure: the same request gives the same plan, bit for bit.
+/// Plans one outlet over the request's span. Pure: the same request gives the same plan, bit for
+/// bit. What cannot be planned at all is refused by name; a gate that is not available is planned
+/// as staying shut.
 pub fn plan(site: &Site, request: &PlanRequest) -> Result<Plan, PlanError> {
-    let mut problem = Problem::new(site, request)?;
-    let path = feasible(&mut problem);
+    let problem = Problem::new(site, request)?;
+    let path = feasible(&problem);
     let outlet = &site.outlets[request.outlet];
-    let mut assets = vec![asset_plan(&problem, &path, outlet.gate, |s| gate_slot(&problem, s))];
-    let mut running = 0;
-    for pump in &outlet.pumps {
-        let available = request.available[pump.index()];
-        if available {
-            running += 1;
-        }
-        let number = running;
-        assets.push(asset_plan(&problem, &path, *pump, |s| pump_slot(s, number, available)));
-    }
+    let mut assets = vec![gate_plan(&problem, &path, outlet.gate)];
+    assets.extend(outlet.pumps.iter().map(|pump| pump_plan(&problem, &path, *pump)));
     let energy_kwh: f64 = path.steps.iter().map(|s| s.energy_kwh).sum();
     Ok(Plan {
         id: request.id,
@@ -45,153 +41,120 @@ pub fn plan(site: &Site, request: &PlanRequest) -> Result<Plan, PlanError> {
     })
 }
 
-/// Slots of one asset over the whole span: rest between the windows, and in each slot of a window
-/// what `of` makes of the step. Neighbours that say the same are joined.
-fn asset_plan(
-    problem: &Problem,
-    path: &Path,
-    asset: AssetId,
-    of: impl Fn(&Step) -> (Setpoint, SlotReason),
-) -> AssetPlan {
-    let rest = of_rest(problem, asset);
-    let mut slots: Vec<Slot> = Vec::new();
-    let mut at = problem.request.span.start();
-    let mut push =
-        |window: Window, (setpoint, why): (Setpoint, SlotReason), tide| match slots.last_mut() {
+/// Slots in order; neighbours that say the same are one.
+#[derive(Default)]
+struct Slots {
+    list: Vec<Slot>,
+}
+
+impl Slots {
+    fn push(
+        &mut self,
+        window: Window,
+        setpoint: Setpoint,
+        why: SlotReason,
+        tide: Option<TideNumber>,
+    ) {
+        match self.list.last_mut() {
             Some(last) if last.setpoint == setpoint && last.why == why && last.tide == tide => {
                 last.window = Window::new(last.window.start(), window.end())
                     .expect("a later end keeps a window a window");
             }
-            _ => slots.push(Slot { window, setpoint, why, tide }),
-        };
+            _ => self.list.push(Slot { window, setpoint, why, tide }),
+        }
+    }
+    /// Rest from `from` to `to`, outside every release window.
+    fn rest(&mut self, problem: &Problem, from: Utc, to: Utc, rest: Setpoint) {
+        let mut at = from;
+        while at < to {
+            let (end, why) = reasons::between(problem, at, to);
+            // Whatever the reason, it moves on.
+            let end = if end > at { end } else { to };
+            self.push(Window::new(at, end).expect("it ends later"), rest, why, None);
+            at = end;
+        }
+    }
+}
+
+/// An asset over the whole span: at rest between the periods, and `of` each step within.
+fn asset_plan(
+    problem: &Problem,
+    path: &Path,
+    asset: AssetId,
+    rest: Setpoint,
+    of: impl Fn(&Step) -> (Setpoint, SlotReason),
+) -> AssetPlan {
+    let span = &problem.request.span;
+    let mut slots = Slots::default();
+    if !problem.request.available[asset.index()] {
+        slots.push(*span, rest, SlotReason::Unavailable, None);
+        return AssetPlan { asset, slots: slots.list };
+    }
+    let mut at = span.start();
     for step in &path.steps {
-        gaps(problem, at, step.slot.start(), &rest, &mut push);
-        push(step.slot, of(step), Some(problem.windows[step.window].tide));
+        slots.rest(problem, at, step.slot.start(), rest);
+        let (setpoint, why) = of(step);
+        let tide = setpoint.is_active().then_some(problem.periods[step.period].tide);
+        slots.push(step.slot, setpoint, why, tide);
         at = step.slot.end();
     }
-    gaps(problem, at, problem.request.span.end(), &rest, &mut push);
-    AssetPlan { asset, slots }
+    slots.rest(problem, at, span.end(), rest);
+    AssetPlan { asset, slots: slots.list }
 }
 
-/// What an asset does outside every window.
-struct Rest {
-    setpoint: Setpoint,
-    available: bool,
-}
-
-fn of_rest(problem: &Problem, asset: AssetId) -> Rest {
-    let gate = problem.request.lawful.asset == asset;
-    let setpoint = if gate { Setpoint::Shut } else { Setpoint::Stopped };
-    Rest { setpoint, available: problem.request.available[asset.index()] }
-}
-
-/// From `from` to `to` nothing is released: inside a lawful window for its margins, else for the
-/// clause that opens the next window.
-fn gaps(
-    problem: &Problem,
-    from: Utc,
-    to: Utc,
-    rest: &Rest,
-    push: &mut impl FnMut(Window, (Setpoint, SlotReason), Option<i64>),
-) {
-    let lawful = &problem.request.lawful.windows;
-    let mut at = from;
-    while at < to {
-        let inside = lawful.iter().find(|w| w.window.contains(at));
-        let next = lawful.iter().find(|w| w.window.start() > at);
-        let (end, why) = match (inside, next) {
-            (Some(w), _) if !rest.available => (w.window.end(), SlotReason::Unavailable),
-            (Some(w), _) => (w.window.end(), SlotReason::EdgeMargin { clause: w.shuts.clause }),
-            (None, Some(w)) => {
-                (w.window.start(), SlotReason::OutsideWindow { clause: w.opens.clause })
+fn gate_plan(problem: &Problem, path: &Path, gate: AssetId) -> AssetPlan {
+    asset_plan(problem, path, gate, Setpoint::Shut, |step| {
+        let why = reasons::of_gate(problem, path, step);
+        match step.does {
+            Does::Idle(_) => (Setpoint::Shut, why),
+            Does::Release { target_m3_s, bound, .. } => {
+                // To a litre a second, downward: enough for any gate, and never over a cap.
+                let target = (target_m3_s * 1e3).floor() / 1e3;
+                let openings = openings(problem, step, target, bound);
+                let target = CubicMetresPerSecond::of(target);
+                (Setpoint::Release { target, openings }, why)
             }
-            (None, None) => (to, SlotReason::OutsideWindow { clause: None }),
-        };
-        let end = end.min(to);
-        if let Ok(window) = Window::new(at, end) {
-            push(window, (rest.setpoint, why), None);
         }
-        at = end;
-    }
-}
-
-fn gate_slot(problem: &Problem, s: &Step) -> (Setpoint, SlotReason) {
-    let w = &problem.windows[s.window];
-    if s.mode == SHUT || s.target_m3_s <= 0.0 {
-        return (Setpoint::Shut, idle_reason(problem, w, s));
-    }
-    let target = round_flow(s.target_m3_s);
-    let setpoint = Setpoint::Release {
-        target: CubicMetresPerSecond::of(target),
-        openings: openings(problem, s, target),
-    };
-    let by = |clause: Option<ClauseId>| clause.map_or(FlowLimit::Head, FlowLimit::Clause);
-    let limited_by = match s.limited {
-        Limited::Cap => by(w.flow_by),
-        Limited::Allotment => by(w.volume_by),
-        Limited::Pump => FlowLimit::Pump,
-        Limited::Ramp => FlowLimit::Ramp,
-        Limited::Head | Limited::StorageLow | Limited::Shut => FlowLimit::Head,
-    };
-    (setpoint, SlotReason::Releasing { limited_by })
-}
-
-/// To a millilitre a second: enough for any gate, and equal slots stay equal.
-fn round_flow(m3_s: f64) -> f64 {
-    (m3_s * 1e3).round() / 1e3
-}
-
-fn idle_reason(problem: &Problem, w: &ReleaseWindow, s: &Step) -> SlotReason {
-    let volume = problem.storage.volume_m3(s.level_m);
-    let middle = s.slot.start() + s.slot.length().scaled(0.5);
-    if w.allotment_m3 <= 1.0 {
-        return w
-            .volume_by
-            .map_or(SlotReason::StorageLow, |clause| SlotReason::CapReached { clause });
-    }
-    if volume <= problem.volume_low + 1.0 {
-        SlotReason::StorageLow
-    } else if problem.gravity_m3_s(s.level_m, middle) <= 0.0 {
-        if problem.pumps.is_empty() { SlotReason::NoHead } else { SlotReason::WaitingForHead }
-    } else {
-        match w.volume_by.filter(|_| s.limited == Limited::Allotment) {
-            Some(clause) => SlotReason::CapReached { clause },
-            None => SlotReason::WaitingForHead,
-        }
-    }
-}
-
-/// Openings at fifths of the target; fully open where the head gives no more, or for pumps.
-fn openings(problem: &Problem, s: &Step, target_m3_s: f64) -> [Percent; 5] {
-    if s.mode > GRAVITY && s.limited == Limited::Pump {
-        return [Percent::FULL; 5];
-    }
-    let middle = s.slot.start() + s.slot.length().scaled(0.5);
-    let outer_m = problem.outer_m(middle);
-    [1.0, 2.0, 3.0, 4.0, 5.0].map(|fifth| {
-        let flow = target_m3_s * fifth / 5.0;
-        let share = problem.outfall.opening_for_flow(s.level_m, outer_m, flow);
-        Percent::clamped(share.map_or(100.0, |a| (a * 1000.0).round() / 10.0))
     })
 }
 
-fn pump_slot(s: &Step, number: usize, available: bool) -> (Setpoint, SlotReason) {
-    if available && s.mode >= GRAVITY + number {
-        return (Setpoint::Running, SlotReason::Assisting);
-    }
-    let why = match (available, s.mode) {
-        (false, _) => SlotReason::Unavailable,
-        (true, SHUT) => SlotReason::WaitingForHead,
-        (true, _) => SlotReason::GravityEnough,
-    };
-    (Setpoint::Stopped, why)
+fn pump_plan(problem: &Problem, path: &Path, pump: AssetId) -> AssetPlan {
+    asset_plan(problem, path, pump, Setpoint::Stopped, |step| match step.does {
+        Does::Idle(_) => (Setpoint::Stopped, reasons::of_gate(problem, path, step)),
+        Does::Release { pumps, .. } => {
+            let tide = problem.periods[step.period].tide;
+            if problem.turn(pumps, tide).any(|p| p.asset == pump) {
+                (Setpoint::Running, SlotReason::Assisting)
+            } else {
+                (Setpoint::Stopped, reasons::of_pump_at_rest(problem, step, tide))
+            }
+        }
+    })
+}
+
+/// Openings at fifths of the target, at the slot's middle heads: fully open where the head gives no
+/// more. With pumps the penstock opens in step with the flow, so that it throttles their start.
+fn openings(problem: &Problem, step: &Step, target_m3_s: f64, bound: Bound) -> [Percent; 5] {
+    let middle = step.slot.start() + step.slot.length().scaled(0.5);
+    let outer_m = problem.outer_m(middle);
+    let level_m = problem.storage.level_m(step.volume_middle);
+    let gravity = problem.outfall.flow_m3_s(level_m, outer_m, 1.0);
+    let pumping = matches!(step.does, Does::Release { pumps, .. } if pumps > 0);
+    [1.0, 2.0, 3.0, 4.0, 5.0].map(|fifths| {
+        if bound == Bound::Pump || (pumping && gravity <= 0.0) {
+            return Percent::clamped(20.0 * fifths);
+        }
+        let flow = target_m3_s * fifths / 5.0;
+        let share = problem.outfall.opening_for_flow(level_m, outer_m, flow);
+        Percent::clamped(share.map_or(100.0, |a| (a * 1000.0).round() / 10.0))
+    })
 }
 
 /// One release a stretch of flow: a pause of a slot or more makes two.
 fn releases(problem: &Problem, path: &Path) -> Vec<PlannedRelease> {
     let mut list: Vec<PlannedRelease> = Vec::new();
     for s in path.steps.iter().filter(|s| s.released_m3 > 0.0) {
-        let tide = problem.windows[s.window].tide;
+        let tide = problem.periods[s.period].tide;
         let volume = CubicMetres::of(s.released_m3);
         match list.last_mut().filter(|r| r.window.end() == s.slot.start() && r.tide == tide) {
             Some(r) => {
@@ -204,71 +167,59 @@ fn releases(problem: &Problem, path: &Path) -> Vec<PlannedRelease> {
     list
 }
 
-/// The storage level on the 5-minute grid, from the minute-by-minute volumes.
+/// The storage level at each instant of the 5-minute grid within the span.
 fn level(problem: &Problem, path: &Path) -> Series {
     let span = problem.request.span;
-    let last = path.volumes.len() - 1;
-    Series::sampled(&span, SLOT, |t| {
+    let end = Window::new(span.start(), span.end().floor_to(SLOT)).expect("a slot or more");
+    Series::sampled(&end, SLOT, |t| {
+        // Every instant of the grid is the end of a minute that was walked.
         let n = path.volumes.partition_point(|(at, _)| *at <= t);
-        let (t0, v0) = path.volumes[n.saturating_sub(1)];
-        let (t1, v1) = path.volumes[n.min(last)];
-        let share = if t1 > t0 { (t - t0).as_seconds() / (t1 - t0).as_seconds() } else { 0.0 };
-        problem.storage.level_m(v0 + (v1 - v0) * share.clamp(0.0, 1.0))
+        problem.storage.level_m(path.volumes[n - 1].1)
     })
-    .expect("a span of days has a grid, and volumes are finite")
+    .expect("a slot or more gives two values, and volumes are finite")
 }
 
-/// Every spill, with the clauses that bound the releases of the two days before it.
+/// Every spill, with the clauses that bound the releases before it.
 fn shortfalls(problem: &Problem, path: &Path) -> Vec<Shortfall> {
-    let mut list = Vec::new();
-    for (from, to, m3) in &path.spills {
-        let Ok(spill) = Window::new(*from, *to) else { continue };
-        let before =
-            |w: &&ReleaseWindow| w.lawful.start() < *to && w.lawful.end() > *from - Span::hours(48);
-        let mut clauses: Vec<ClauseId> = Vec::new();
-        for w in problem.windows.iter().filter(before) {
-            let left = w.allotment_m3 - path.in_tide(&problem.windows, w.tide);
-            clauses.extend(if left < 50.0 { w.volume_by } else { w.shuts_by });
-            clauses.extend(if left < 50.0 { None } else { w.opens_by });
-        }
-        let nil = &problem.request.lawful.nil;
-        clauses.extend(nil.iter().map(|n| n.clause));
-        clauses.sort_unstable();
-        clauses.dedup();
-        list.push(Shortfall { spill, volume: CubicMetres::of(*m3), clauses });
-    }
-    list
+    let each = path.spills.iter().filter_map(|(from, to, m3)| {
+        let spill = Window::new(*from, *to).ok()?;
+        Some(Shortfall {
+            spill,
+            volume: CubicMetres::of(*m3),
+            clauses: binding(problem, path, *to),
+        })
+    });
+    each.collect()
 }
 
-/// Of the whole request, in a fixed order.
-fn digest(r: &PlanRequest) -> u64 {
-    let mut d = Digest::new();
-    d.i64(r.as_of.as_micros()).i64(r.span.start().as_micros()).i64(r.span.end().as_micros());
-    d.u64(r.outlet as u64).f64(r.level_now.get()).f64(r.flow_now.get());
-    d.i64(r.closing_lead.as_micros()).u64(r.forecast_digest);
-    for series in [&r.inflow, &r.outer_level] {
-        d.i64(series.start().as_micros()).i64(series.step().as_micros());
-        series.values().iter().for_each(|v| {
-            d.f64(*v);
-        });
-    }
-    for w in &r.lawful.windows {
-        d.i64(w.tide).i64(w.window.start().as_micros()).i64(w.window.end().as_micros());
-        d.f64(w.volume_max.map_or(-1.0, |c| c.max.get()));
-        d.f64(w.flow_max.map_or(-1.0, |c| c.max.get()));
-        d.i64(w.opens.time_sd.as_micros()).i64(w.shuts.time_sd.as_micros());
-    }
-    for (tide, volume) in &r.used_tides {
-        d.i64(*tide).f64(volume.get());
-    }
-    for cap in &r.caps {
-        d.u64(u64::from(cap.clause.0)).f64(cap.volume_max.get());
-        for (w, v) in &cap.past {
-            d.i64(w.start().as_micros()).f64(v.get());
+/// Clauses that kept the releases before `until` from being more: volumes that were used up, tides
+/// that had none, and, where a release ran to its window's end, the window and the flow.
+fn binding(problem: &Problem, path: &Path, until: Utc) -> Vec<ClauseId> {
+    let mut clauses: Vec<ClauseId> = Vec::new();
+    for (n, step) in path.steps.iter().enumerate().filter(|(_, s)| s.slot.start() < until) {
+        let window = step.window.map(|w| &problem.windows[w]);
+        match step.does {
+            Does::Idle(Idle::Used(clause)) => clauses.push(clause),
+            Does::Idle(_) => {}
+            Does::Release { bound, .. } => {
+                if let Bound::Volume(clause) = bound {
+                    clauses.push(clause);
+                }
+                let next = path.steps.get(n + 1);
+                let last = next.is_none_or(|s| s.window != step.window);
+                let left = problem.periods[step.period].allotment_m3 - path.in_period(step.period);
+                if let Some(w) = window.filter(|_| last && left > 1.0) {
+                    clauses.extend(w.shuts_by);
+                    clauses.extend(w.flow_by);
+                }
+            }
         }
     }
-    r.available.iter().for_each(|a| {
-        d.u64(u64::from(*a));
-    });
-    d.get()
+    let nil = reasons::nil_windows(&problem.request.lawful);
+    let since = problem.request.span.start();
+    let within = nil.iter().filter(|(w, _)| w.start() < until && w.end() > since);
+    clauses.extend(within.map(|(_, clause)| *clause));
+    clauses.sort_unstable();
+    clauses.dedup();
+    clauses
 }

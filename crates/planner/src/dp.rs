@@ -1,248 +1,436 @@
-//! Backwards over the slots: the least cost to go from every (storage volume, volume used this
-//! tide, mode).
+//! Backwards over the slots: the least cost to go from every storage volume, volume used this tide
+//! and mode (shut; open with 0, 1, 2, ... pumps).
 //!
-//! Modes: shut; gravity by its age (a flow that ramps up passes less in its first three slots);
-//! gravity in full; gravity helped by 1, 2, ... pumps. Outside the release windows the storage only
-//! fills, which is one step.
-
-use units::Window;
+//! While nothing spills, storage volume + volume used = the volume at the tide's beginning + inflow,
+//! whatever is decided. So the states of a tide fall into *lines*, one for each volume that it may
+//! begin with, and along a line the volume used is the only coordinate: the costs are exact in the
+//! one and interpolated in the other. Where it spills, the storage stands at the crest, and what the
+//! line then says is on the safe side; the forward pass solves its own line anew.
+//!
+//! Opening takes several slots at one stroke, until the ramp has reached the flow aimed at. Closing
+//! is taken as immediate here, except towards the window's end; the forward pass ramps it.
 
 use crate::problem::Problem;
-use crate::windows::ReleaseWindow;
+use crate::windows::{Period, SlotData};
 
-/// The index of a mode: 0 shut, 1 to 3 ramping up, 4 gravity, 5 and up pumps.
-pub(crate) type Mode = usize;
-pub(crate) const SHUT: Mode = 0;
-pub(crate) const GRAVITY: Mode = 4;
+/// What the gate does, and how many pumps help.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(crate) enum Mode {
+    Shut,
+    Open(usize),
+}
 
-/// Prices. Their order is the order of rule 1; within it they are a choice, in the money of the
-/// energy price.
-const SPILL_PER_M3: f64 = 1000.0;
-const ALARM_PER_M3_H: f64 = 0.05;
-const OPENING: f64 = 0.02;
-const PUMP_START: f64 = 0.50;
-/// Full storage costs this an hour, half full a quarter of it.
-const STORED_PER_H: f64 = 0.02;
-/// And this at the end of the plan.
-const STORED_AT_END: f64 = 2.0;
-
-/// Volume steps of the grids; between them the cost is interpolated.
-const STORAGE_STEPS: usize = 96;
-const USED_STEP_M3: f64 = 250.0;
-const USED_STEPS_MOST: usize = 60;
-
-/// Costs on a grid of (mode, used, storage volume).
-#[derive(Clone, Debug)]
-pub(crate) struct Layer {
-    used_step: f64,
-    used_count: usize,
-    modes: usize,
+/// Least cost to go by storage volume, straight between the points and held beyond them.
+#[derive(Clone, PartialEq, Debug)]
+pub(crate) struct ToGo {
+    low: f64,
+    step: f64,
     values: Vec<f64>,
 }
 
-/// The cost to go after every slot of every window, for the forward pass to choose by.
-pub(crate) struct Policy {
-    pub volume_step: f64,
-    /// For each window, one layer a slot: the cost to go from its end.
-    pub after: Vec<Vec<Layer>>,
+impl ToGo {
+    pub(crate) fn at(&self, volume: f64) -> f64 {
+        line(&self.values, (volume - self.low) / self.step)
+    }
 }
 
-/// What one slot does to a state.
-#[derive(Clone, Copy, PartialEq, Debug)]
-pub(crate) struct Passed {
-    pub volume: f64,
-    pub used: f64,
-    pub cost: f64,
+/// Grid of storage volumes between tides, m3.
+const GAP_STEP_M3: f64 = 250.0;
+/// Grid of the backward pass, m3; the forward pass solves its one line finer.
+const STEP_M3: f64 = 250.0;
+const FINE_STEP_M3: f64 = 100.0;
+/// Less than this is not worth planning a release for.
+pub(crate) const WORTH_M3: f64 = 25.0;
+
+/// Which lines of a period to solve.
+struct Lines {
+    first_slot: usize,
+    /// Volume at the first slot with nothing used, on line 0.
+    base: f64,
+    count: usize,
+    /// Steps of the volume used, and their size.
+    nodes: usize,
+    step: f64,
+    begun: bool,
 }
 
-pub(crate) fn mode_count(problem: &Problem) -> usize {
-    GRAVITY + 1 + problem.pumps.len()
+/// Costs of a period from one slot on: at each slot's start, by mode, line and volume used.
+pub(crate) struct Solved {
+    lines: Lines,
+    pumps: usize,
+    /// One for each slot from the first, and one for the end.
+    layers: Vec<Vec<f64>>,
 }
 
-/// The mode that follows: a pump may start from any open or shut gate, gravity grows older.
-pub(crate) fn choices(problem: &Problem, from: Mode) -> impl Iterator<Item = Mode> {
-    let gravity = match from {
-        SHUT => 1,
-        m if m < GRAVITY => m + 1,
-        _ => GRAVITY,
-    };
-    [SHUT, gravity].into_iter().chain(GRAVITY + 1..mode_count(problem))
-}
-
-/// Strokes and starts of going from one mode to another.
-pub(crate) fn switching(from: Mode, to: Mode) -> f64 {
-    let opening = if from == SHUT && to != SHUT { OPENING } else { 0.0 };
-    let starts = to.saturating_sub(GRAVITY.max(from)) as f64;
-    opening + PUMP_START * starts
+/// One action in one slot from each volume that a line can have: what is released and its cost.
+struct Moves {
+    /// Whole steps of the volume used, the rest of one, and the cost; which is not finite where the
+    /// action is not allowed.
+    each: Vec<(usize, f64, f64)>,
+    /// How many slots it takes.
+    slots: usize,
 }
 
 impl Problem<'_> {
-    /// Mean flow of a slot in a mode, m3/s, before volumes limit it.
-    pub(crate) fn slot_flow_m3_s(
-        &self,
-        w: &ReleaseWindow,
-        slot: &Window,
-        mode: Mode,
-        level_m: f64,
-    ) -> f64 {
-        if mode == SHUT {
-            return 0.0;
-        }
-        let dt = slot.length().as_seconds();
-        let middle = slot.start() + slot.length().scaled(0.5);
-        let gravity = self.gravity_m3_s(level_m, middle);
-        if mode > GRAVITY {
-            let pumped = self.pumped_m3_s(mode - GRAVITY);
-            return gravity.max(pumped).min(w.flow_aim_m3_s);
-        }
-        let left_s = (w.flow.end() - middle).as_seconds();
-        let mut flow = gravity.min(w.flow_aim_m3_s).min(self.ramp_m3_s2 * left_s);
-        if mode < GRAVITY {
-            flow = flow.min(self.ramp_m3_s2 * dt * (mode as f64 - 0.5));
-        }
-        flow
-    }
-
-    /// One slot from (volume, used) in a mode: what leaves keeps the storage above its lowest
-    /// working level and the tide within its allotment; what is over the weir's crest spills.
-    pub(crate) fn pass(
-        &self,
-        w: &ReleaseWindow,
-        slot: &Window,
-        mode: Mode,
-        volume: f64,
-        used: f64,
-    ) -> Passed {
-        let dt = slot.length().as_seconds();
-        let inflow = self.inflow_m3(slot.start(), slot.end());
-        let flow = self.slot_flow_m3_s(w, slot, mode, self.storage.level_m(volume));
-        let above = (volume + inflow - self.volume_low).max(0.0);
-        let released = (flow * dt).min(above).min((w.allotment_m3 - used).max(0.0));
-        let mut cost = self.stored_cost(volume, dt);
-        if mode > GRAVITY {
-            cost += self.pump_kw(mode - GRAVITY) * dt / 3600.0 * self.energy_price;
-        }
-        let (volume, spilled) = self.spilled(volume + inflow - released);
-        Passed { volume, used: used + released, cost: cost + spilled * SPILL_PER_M3 }
-    }
-
-    pub(crate) fn spilled(&self, volume: f64) -> (f64, f64) {
-        let over = (volume - self.volume_spill).max(0.0);
-        (volume - over, over)
-    }
-    /// Water kept for `dt`: dearer the fuller the storage, and much dearer above the alarm.
-    fn stored_cost(&self, volume: f64, dt: f64) -> f64 {
-        let share = volume / self.volume_spill;
-        let over = (volume - self.volume_alarm).max(0.0);
-        (STORED_PER_H * share * share + ALARM_PER_M3_H * over) * dt / 3600.0
-    }
-    fn end_cost(&self, volume: f64) -> f64 {
-        let share = volume / self.volume_spill;
-        STORED_AT_END * share * share
-    }
-    /// Filling from `gap.start()` to `gap.end()` without a release, hour by hour for the prices.
-    fn fill(&self, gap: &Window, volume: f64) -> (f64, f64) {
-        let (mut v, mut cost) = (volume, 0.0);
-        let mut t = gap.start();
-        while t < gap.end() {
-            let next = (t + units::Span::hours(1)).min(gap.end());
-            cost += self.stored_cost(v, (next - t).as_seconds());
-            let (kept, spilled) = self.spilled(v + self.inflow_m3(t, next));
-            cost += spilled * SPILL_PER_M3;
-            (v, t) = (kept, next);
-        }
-        (v, cost)
-    }
-
-    /// Solves backwards and keeps what the forward pass needs.
-    pub(crate) fn solve(&self) -> Policy {
-        let volume_step = self.volume_spill / STORAGE_STEPS as f64;
-        let grid = |i: usize| i as f64 * volume_step;
-        let mut to_go: Vec<f64> = (0..=STORAGE_STEPS).map(|i| self.end_cost(grid(i))).collect();
-        let mut until = self.request.span.end();
-        let mut after: Vec<Vec<Layer>> = vec![Vec::new(); self.windows.len()];
-        for (n, w) in self.windows.iter().enumerate().rev() {
-            to_go = self.filled(w.flow.end(), until, &to_go, volume_step);
-            // A second window of the same tide goes on with what the first has used; it is rare,
-            // and taken as having the tide's whole allotment here: the forward pass is exact.
-            let mut layer = Layer::level(w, mode_count(self), &to_go);
-            for slot in w.slots.iter().rev() {
-                let before = self.backward(w, slot, &layer, volume_step);
-                after[n].push(layer);
-                layer = before;
-            }
-            after[n].reverse();
-            to_go = (0..=STORAGE_STEPS).map(|i| layer.value(SHUT, 0, i)).collect();
-            until = w.flow.start();
-        }
-        Policy { volume_step, after }
-    }
-
-    /// The cost to go from `from`, with nothing but inflow until `until`.
-    fn filled(&self, from: units::Utc, until: units::Utc, to_go: &[f64], step: f64) -> Vec<f64> {
-        let Ok(gap) = Window::new(from, until) else { return to_go.to_vec() };
-        let cost = |i: usize| {
-            let (v, cost) = self.fill(&gap, i as f64 * step);
-            cost + line(to_go, v / step)
+    /// Least costs after each period, for the forward pass.
+    pub(crate) fn solve(&self, allotments_m3: &[f64]) -> Vec<ToGo> {
+        let mut after = Vec::with_capacity(self.periods.len());
+        let kept = self.volume_spill - self.volume_low;
+        let mut to_go = ToGo {
+            low: self.volume_low,
+            step: kept,
+            values: vec![0.0, self.prices.stored_at_end_m3 * kept],
         };
-        (0..=STORAGE_STEPS).map(cost).collect()
+        let mut until = self.request.span.end();
+        for (period, allotment) in self.periods.iter().zip(allotments_m3).rev() {
+            to_go = self.filled(period.end(), until, &to_go);
+            after.push(to_go.clone());
+            until = period.start();
+            to_go = match self.lines_of(period, *allotment) {
+                None => self.filled(period.start(), period.end(), &to_go),
+                Some(lines) => self.solve_lines(period, lines, &to_go).beginnings(),
+            };
+        }
+        after.reverse();
+        after
     }
 
-    fn backward(&self, w: &ReleaseWindow, slot: &Window, next: &Layer, step: f64) -> Layer {
-        let modes = mode_count(self);
-        let mut layer = Layer { values: vec![0.0; next.values.len()], ..next.clone() };
-        let mut in_mode = vec![0.0; modes];
-        for used in 0..next.used_count {
-            for i in 0..=STORAGE_STEPS {
-                let (v, u) = (i as f64 * step, used as f64 * next.used_step);
-                for (mode, cost) in in_mode.iter_mut().enumerate() {
-                    let p = self.pass(w, slot, mode, v, u);
-                    *cost = p.cost + next.at(mode, p.used, p.volume / step);
+    fn lines_of(&self, period: &Period, allotment: f64) -> Option<Lines> {
+        let allotment = self.possible(period, 0, self.volume_spill).min(allotment);
+        if allotment < WORTH_M3 {
+            return None;
+        }
+        let nodes = (allotment / STEP_M3).ceil().max(1.0) as usize;
+        let step = allotment / nodes as f64;
+        let count = ((self.volume_spill - self.volume_low) / step).ceil() as usize + 1;
+        let (base, begun) = (self.volume_low, period.begun);
+        Some(Lines { first_slot: 0, base, count, nodes, step, begun })
+    }
+
+    /// The one line that a period is on at slot `first_slot`, with `volume` in the storage and
+    /// `allotment` left; `None` where nothing is worth releasing.
+    pub(crate) fn solve_line(
+        &self,
+        period: &Period,
+        first_slot: usize,
+        volume: f64,
+        allotment: f64,
+        begun: bool,
+        after: &ToGo,
+    ) -> Option<Solved> {
+        let allotment = self.possible(period, first_slot, volume).min(allotment);
+        if allotment < WORTH_M3 {
+            return None;
+        }
+        let nodes = (allotment / FINE_STEP_M3).ceil().max(1.0) as usize;
+        let step = allotment / nodes as f64;
+        let lines = Lines { first_slot, base: volume, count: 1, nodes, step, begun };
+        Some(self.solve_lines(period, lines, after))
+    }
+
+    /// The most that the rest of a period could release from `volume`, heads aside.
+    fn possible(&self, period: &Period, first_slot: usize, volume: f64) -> f64 {
+        let slots = &period.slots[first_slot..];
+        let most: f64 = slots.iter().map(|s| s.most_m3).sum();
+        let inflow: f64 = slots.iter().map(|s| s.inflow_m3).sum();
+        most.min((volume + inflow - self.volume_low).max(0.0))
+    }
+
+    /// Cost to go from `from`, with nothing but inflow until `until`.
+    fn filled(&self, from: units::Utc, until: units::Utc, to_go: &ToGo) -> ToGo {
+        let count = ((self.volume_spill - self.volume_low) / GAP_STEP_M3).ceil().max(1.0);
+        let step = (self.volume_spill - self.volume_low) / count;
+        let cost = |i: usize| {
+            let (mut volume, mut cost) = (self.volume_low + i as f64 * step, 0.0);
+            let mut t = from;
+            while t < until {
+                let next = (t + units::Span::hours(1)).min(until);
+                let (kept, more) =
+                    self.kept(volume, self.inflow_m3(t, next), (next - t).as_hours());
+                (volume, cost, t) = (kept, cost + more, next);
+            }
+            cost + to_go.at(volume)
+        };
+        ToGo { low: self.volume_low, step, values: (0..=count as usize).map(cost).collect() }
+    }
+
+    /// What a volume becomes by what it gains, and what that costs.
+    pub(crate) fn kept(&self, volume: f64, gain: f64, hours: f64) -> (f64, f64) {
+        let (kept, spilled) = self.spilled(volume + gain);
+        let stored = self.prices.stored((volume + kept) / 2.0, self.volume_alarm, hours);
+        (kept, stored + spilled * self.prices.spill_m3)
+    }
+
+    /// What a slot releases from `volume` with the gate open and `pumps` running, m3; `None` where
+    /// gravity alone has no head that lasts. `open_s`: how long the gate has been opening.
+    pub(crate) fn passes(
+        &self,
+        s: &SlotData,
+        tide: i64,
+        pumps: usize,
+        volume: f64,
+        open_s: Option<f64>,
+    ) -> Option<f64> {
+        if pumps == 0 && !self.head_lasts(volume, s.outer_most_m) {
+            return None;
+        }
+        let dt = s.slot.length().as_seconds();
+        let ramp = open_s.map_or(f64::INFINITY, |e| self.ramp_m3_s2 * (e + dt / 2.0) * dt);
+        let able = s.most_m3.min(ramp).min((volume + s.inflow_m3 - self.volume_low).max(0.0));
+        let pumped = self.pumped_m3_s(pumps, tide);
+        let flow = |v: f64| self.gravity_m3_s(v, s.outer_middle_m).max(pumped) * dt;
+        let first = flow(volume).min(able);
+        Some(flow(volume + (s.inflow_m3 - first) / 2.0).min(able))
+    }
+
+    /// Whether `to` pumps may run in this slot after `from`: changes keep their block, and a pump
+    /// stops only where gravity carries its flow, as a stop cannot be ramped.
+    pub(crate) fn may_change(
+        &self,
+        s: &SlotData,
+        tide: i64,
+        from: usize,
+        to: usize,
+        volume: f64,
+    ) -> bool {
+        if from == to {
+            return true;
+        }
+        let carried = || {
+            let gravity = self.gravity_m3_s(volume, s.outer_middle_m);
+            gravity + self.ramp_m3_s2 * 60.0 >= self.pumped_m3_s(from, tide)
+        };
+        s.pumps_may_change && (to > from || carried())
+    }
+
+    pub(crate) fn energy(&self, s: &SlotData, tide: i64, pumps: usize) -> f64 {
+        self.pump_kw(pumps, tide) * s.slot.length().as_hours() * self.prices.energy_per_kwh
+    }
+
+    /// Staying shut, or open with `pumps`, for slot `n`.
+    fn moves(&self, period: &Period, l: &Lines, n: usize, mode: Mode, inflow: f64) -> Moves {
+        let s = &period.slots[n];
+        self.table(l, inflow, 1, |volume| {
+            let (released, energy) = match mode {
+                Mode::Shut => (0.0, 0.0),
+                Mode::Open(p) => {
+                    (self.passes(s, period.tide, p, volume, None)?, self.energy(s, period.tide, p))
                 }
-                for from in 0..modes {
-                    let best = choices(self, from)
-                        .map(|to| in_mode[to] + switching(from, to))
-                        .fold(f64::INFINITY, f64::min);
-                    layer.set(from, used, i, best);
+            };
+            let hours = s.slot.length().as_hours();
+            let (_, cost) = self.kept(volume, s.inflow_m3 - released, hours);
+            Some((released, cost + energy))
+        })
+    }
+
+    /// Opening at slot `n` with `pumps`, until the ramp has reached the flow aimed at.
+    fn opening(&self, period: &Period, l: &Lines, n: usize, pumps: usize, inflow: f64) -> Moves {
+        let slots = self.ramp_slots(period, n);
+        self.table(l, inflow, slots, |volume| {
+            let (mut v, mut released, mut cost, mut open_s) = (volume, 0.0, 0.0, 0.0);
+            for s in &period.slots[n..n + slots] {
+                let out = self.passes(s, period.tide, pumps, v, Some(open_s))?;
+                let (kept, more) = self.kept(v, s.inflow_m3 - out, s.slot.length().as_hours());
+                cost += more + self.energy(s, period.tide, pumps);
+                open_s += s.slot.length().as_seconds();
+                (v, released) = (kept, released + out);
+            }
+            Some((released, cost))
+        })
+    }
+
+    /// How many slots from `n` on the ramp takes, within its window.
+    pub(crate) fn ramp_slots(&self, period: &Period, n: usize) -> usize {
+        let window = period.slots[n].window;
+        let aim = window.map_or(0.0, |w| self.windows[w].flow_aim_m3_s);
+        let until = period.slots[n].slot.start()
+            + units::Span::from_seconds_f64((aim / self.ramp_m3_s2).min(86_400.0));
+        let of_ramp = |s: &&SlotData| s.window == window && s.slot.start() < until;
+        period.slots[n..].iter().take_while(of_ramp).count().max(1)
+    }
+
+    fn table(
+        &self,
+        l: &Lines,
+        inflow: f64,
+        slots: usize,
+        of: impl Fn(f64) -> Option<(f64, f64)>,
+    ) -> Moves {
+        let each = (0..l.count + l.nodes).map(|m| {
+            let raw = l.base + (m as f64 - l.nodes as f64) * l.step + inflow;
+            let found = of(raw.min(self.volume_spill));
+            found.map_or((0, 0.0, f64::INFINITY), |(x, cost)| {
+                let steps = x / l.step;
+                (steps as usize, steps.fract(), cost)
+            })
+        });
+        Moves { each: each.collect(), slots }
+    }
+
+    fn solve_lines(&self, period: &Period, lines: Lines, after: &ToGo) -> Solved {
+        let slots = &period.slots[lines.first_slot..];
+        let mut inflow = vec![0.0];
+        for s in slots {
+            inflow.push(inflow[inflow.len() - 1] + s.inflow_m3);
+        }
+        let pumps = self.pumps.len();
+        let mut solved = Solved { lines, pumps, layers: Vec::with_capacity(slots.len() + 1) };
+        let last = solved.end(self, inflow[slots.len()], after);
+        solved.layers.push(last);
+        // Latest first while they are made.
+        for n in (0..slots.len()).rev() {
+            let layer = self.backward(period, &solved, n, inflow[n]);
+            solved.layers.push(layer);
+        }
+        solved.layers.reverse();
+        solved
+    }
+
+    /// The layer at the start of slot `n` (counted from the first solved) from those after it.
+    fn backward(&self, period: &Period, solved: &Solved, n: usize, inflow: f64) -> Vec<f64> {
+        let l = &solved.lines;
+        let s = &period.slots[l.first_slot + n];
+        let at = l.first_slot + n;
+        let shut = self.moves(period, l, at, Mode::Shut, inflow);
+        if s.window.is_none() {
+            return solved.only_shut(&shut);
+        }
+        let each = 0..=solved.pumps;
+        let open: Vec<Moves> =
+            each.clone().map(|p| self.moves(period, l, at, Mode::Open(p), inflow)).collect();
+        let opening: Vec<Moves> = each
+            .filter(|p| *p == 0 || s.pumps_may_change)
+            .map(|p| self.opening(period, l, at, p, inflow))
+            .collect();
+        let volume = |m: usize| l.base + (m as f64 - l.nodes as f64) * l.step + inflow;
+        let allowed: Vec<Vec<bool>> = (0..(solved.pumps + 1) * (solved.pumps + 1))
+            .map(|k| (k / (solved.pumps + 1), k % (solved.pumps + 1)))
+            .map(|(from, to)| {
+                let may = |m| {
+                    let v = volume(m).min(self.volume_spill);
+                    self.may_change(s, period.tide, from, to, v)
+                };
+                (0..l.count + l.nodes).map(may).collect()
+            })
+            .collect();
+        solved.layer(
+            &Slotted { shut, open, opening, allowed, free: s.pumps_may_change },
+            &self.prices,
+        )
+    }
+}
+
+/// Everything that one slot offers.
+struct Slotted {
+    shut: Moves,
+    open: Vec<Moves>,
+    opening: Vec<Moves>,
+    /// By (pumps before, pumps in the slot), then by volume.
+    allowed: Vec<Vec<bool>>,
+    free: bool,
+}
+
+impl Solved {
+    const fn width(&self) -> usize {
+        self.lines.nodes + 1
+    }
+    fn row(&self, mode: usize, i: usize) -> core::ops::Range<usize> {
+        let start = (mode * self.lines.count + i) * self.width();
+        start..start + self.width()
+    }
+    fn end(&self, problem: &Problem, inflow: f64, after: &ToGo) -> Vec<f64> {
+        let l = &self.lines;
+        let mut one = Vec::with_capacity(l.count * self.width());
+        for i in 0..l.count {
+            for j in 0..=l.nodes {
+                let raw = l.base + (i as f64 - j as f64) * l.step + inflow;
+                one.push(after.at(raw.min(problem.volume_spill)));
+            }
+        }
+        one.repeat(self.pumps + 2)
+    }
+    /// The layer that is `slots` after the one being made.
+    fn ahead(&self, slots: usize) -> &[f64] {
+        &self.layers[self.layers.len() - slots]
+    }
+    /// Costs of a move on line `i`, ending in `mode`, by the steps used so far.
+    fn costs(&self, moves: &Moves, mode: usize, i: usize, costs: &mut [f64]) {
+        let row = &self.ahead(moves.slots)[self.row(mode, i)];
+        let last = self.lines.nodes;
+        let of_line = moves.each[i..=i + last].iter().rev();
+        for (j, (cost, (steps, rest, price))) in costs.iter_mut().zip(of_line).enumerate() {
+            let at = j + steps;
+            *cost = if at >= last {
+                row[last] + price
+            } else {
+                row[at] + (row[at + 1] - row[at]) * rest + price
+            };
+        }
+    }
+    fn only_shut(&self, shut: &Moves) -> Vec<f64> {
+        let mut one = vec![0.0; self.lines.count * self.width()];
+        for i in 0..self.lines.count {
+            self.costs(shut, 0, i, &mut one[i * self.width()..(i + 1) * self.width()]);
+        }
+        one.repeat(self.pumps + 2)
+    }
+    fn layer(&self, s: &Slotted, prices: &crate::prices::Prices) -> Vec<f64> {
+        let (count, width) = (self.pumps + 1, self.width());
+        let mut layer = vec![0.0; self.ahead(1).len()];
+        let mut shut = vec![0.0; width];
+        let mut other = vec![0.0; width];
+        let mut open = vec![vec![0.0; width]; count];
+        for i in 0..self.lines.count {
+            self.costs(&s.shut, 0, i, &mut shut);
+            for (p, costs) in open.iter_mut().enumerate() {
+                self.costs(&s.open[p], p + 1, i, costs);
+            }
+            let best = &mut layer[self.row(0, i)];
+            best.copy_from_slice(&shut);
+            for (p, moves) in s.opening.iter().enumerate() {
+                self.costs(moves, p + 1, i, &mut other);
+                let starts = prices.pump_start * p as f64;
+                let first = if self.lines.begun { prices.reopening } else { prices.opening };
+                best[0] = best[0].min(other[0] + first + starts);
+                for (b, o) in best.iter_mut().zip(&other).skip(1) {
+                    *b = b.min(o + prices.reopening + starts);
+                }
+            }
+            for from in 0..count {
+                let best = &mut layer[self.row(from + 1, i)];
+                match from == 0 || s.free {
+                    true => best.copy_from_slice(&shut),
+                    false => best.fill(f64::INFINITY),
+                }
+                for (to, costs) in open.iter().enumerate() {
+                    let starts = prices.pump_start * to.saturating_sub(from) as f64;
+                    let allowed = &s.allowed[from * count + to][i..i + width];
+                    for ((b, c), a) in best.iter_mut().zip(costs).zip(allowed.iter().rev()) {
+                        *b = if *a { b.min(c + starts) } else { *b };
+                    }
                 }
             }
         }
         layer
     }
-}
-
-impl Layer {
-    /// The same cost whatever has been used and in whatever mode.
-    fn level(w: &ReleaseWindow, modes: usize, to_go: &[f64]) -> Self {
-        let wanted = (w.allotment_m3.min(1e6) / USED_STEP_M3).ceil() as usize;
-        let steps = wanted.clamp(1, USED_STEPS_MOST);
-        let used_step = w.allotment_m3.min(1e6).max(1.0) / steps as f64;
-        let used_count = steps + 1;
-        let values = to_go.repeat(modes * used_count);
-        Self { used_step, used_count, modes, values }
+    /// Cost to go at the first slot's start, shut and with nothing used, by volume.
+    fn beginnings(&self) -> ToGo {
+        let first = &self.layers[0];
+        let values = (0..self.lines.count).map(|i| first[self.row(0, i).start]).collect();
+        ToGo { low: self.lines.base, step: self.lines.step, values }
     }
-    fn index(&self, mode: Mode, used: usize, i: usize) -> usize {
-        debug_assert!(mode < self.modes && used < self.used_count);
-        (mode * self.used_count + used) * (STORAGE_STEPS + 1) + i
-    }
-    fn value(&self, mode: Mode, used: usize, i: usize) -> f64 {
-        self.values[self.index(mode, used, i)]
-    }
-    fn set(&mut self, mode: Mode, used: usize, i: usize, value: f64) {
-        let at = self.index(mode, used, i);
-        self.values[at] = value;
-    }
-    /// Straight between the grid's points in both volumes; `steps` is the storage volume in steps.
-    pub(crate) fn at(&self, mode: Mode, used: f64, steps: f64) -> f64 {
-        let u = (used / self.used_step).clamp(0.0, (self.used_count - 1) as f64);
-        let low = (u.floor() as usize).min(self.used_count - 1);
-        let high = (low + 1).min(self.used_count - 1);
-        let row = |n: usize| {
-            let start = self.index(mode, n, 0);
-            line(&self.values[start..=start + STORAGE_STEPS], steps)
+    /// Cost to go on the one line at the start of slot `n` (of the period), in a mode, with `used`
+    /// since the first slot solved.
+    pub(crate) fn at(&self, n: usize, mode: Mode, used: f64) -> f64 {
+        let mode = match mode {
+            Mode::Shut => 0,
+            Mode::Open(p) => p + 1,
         };
-        let (a, share) = (row(low), u - low as f64);
-        if share == 0.0 { a } else { a + (row(high) - a) * share }
+        let layer = &self.layers[n - self.lines.first_slot];
+        line(&layer[self.row(mode, 0)], used / self.lines.step)
+    }
+    pub(crate) const fn first_slot(&self) -> usize {
+        self.lines.first_slot
     }
 }
 
@@ -250,7 +438,9 @@ impl Layer {
 fn line(values: &[f64], at: f64) -> f64 {
     let last = values.len() - 1;
     let x = at.clamp(0.0, last as f64);
-    let low = (x.floor() as usize).min(last.saturating_sub(1));
+    let low = (x as usize).min(last.saturating_sub(1));
+    let (a, b) = (values[low], values[(low + 1).min(last)]);
     let share = x - low as f64;
-    values[low] + (values[low + 1] - values[low]) * share
+    // An end that is not finite (an action that is not allowed) is not mixed in by nought.
+    if share == 0.0 { a } else { a + (b - a) * share }
 }

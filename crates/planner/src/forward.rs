@@ -1,39 +1,48 @@
 //! Forwards from now: the best choice at each slot, carried out minute by minute with the true
-//! relation, the ramp, and volumes exact.
+//! relation, the ramp, and every cap exact.
 
-use model::TideNumber;
+use model::ClauseId;
 use units::{Span, Utc, Window};
 
-use crate::dp::{GRAVITY, Mode, Policy, SHUT, choices, switching};
-use crate::problem::Problem;
-use crate::windows::ReleaseWindow;
+use crate::dp::{Mode, Solved, ToGo, WORTH_M3};
+use crate::ledger::Ledger;
+use crate::problem::{Problem, SLOT};
+use crate::throttle::{Bound, Room, Throttle};
+use crate::windows::{Period, SlotData};
 
-/// One slot as it will go.
+/// One slot of a period as it will go.
 #[derive(Clone, Copy, PartialEq, Debug)]
 pub(crate) struct Step {
     pub slot: Window,
-    /// Which release window it belongs to.
-    pub window: usize,
-    pub mode: Mode,
-    /// What the slot aims at, m3/s.
-    pub target_m3_s: f64,
+    pub period: usize,
+    pub window: Option<usize>,
+    pub does: Does,
     pub released_m3: f64,
     pub energy_kwh: f64,
-    pub limited: Limited,
-    /// The storage level in the middle of it.
-    pub level_m: f64,
+    /// Storage volumes at its start and in its middle.
+    pub volume_start: f64,
+    pub volume_middle: f64,
 }
 
-/// What keeps a slot's flow from being more.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub(crate) enum Does {
+    Idle(Idle),
+    /// `target_m3_s`: the most that the flow may be in the slot, heads aside.
+    Release {
+        pumps: usize,
+        target_m3_s: f64,
+        bound: Bound,
+    },
+}
+
+/// Why nothing is released in a slot that lies in a window.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
-pub(crate) enum Limited {
-    Shut,
-    Cap,
-    Head,
-    Pump,
-    Ramp,
-    Allotment,
-    StorageLow,
+pub(crate) enum Idle {
+    Used(ClauseId),
+    Low,
+    NoHead,
+    Waiting,
+    Between,
 }
 
 /// The whole trajectory.
@@ -44,89 +53,98 @@ pub(crate) struct Path {
     pub spills: Vec<(Utc, Utc, f64)>,
     /// (instant, storage volume), in order.
     pub volumes: Vec<(Utc, f64)>,
-    pub inflow_m3: f64,
+    /// For each period, the volume that it had, and the longer cap if one made it less.
+    pub allotments: Vec<(f64, Option<ClauseId>)>,
+    pub cost: f64,
 }
 
 impl Path {
     pub(crate) fn released_m3(&self) -> f64 {
         self.steps.iter().map(|s| s.released_m3).sum()
     }
-    pub(crate) fn in_tide(&self, windows: &[ReleaseWindow], tide: TideNumber) -> f64 {
-        let of_tide = self.steps.iter().filter(|s| windows[s.window].tide == tide);
-        of_tide.map(|s| s.released_m3).sum()
+    pub(crate) fn in_period(&self, period: usize) -> f64 {
+        let of_period = self.steps.iter().filter(|s| s.period == period);
+        of_period.map(|s| s.released_m3).sum()
     }
 }
 
 const MINUTE: Span = Span::minutes(1);
-const SLOT: Span = crate::problem::SLOT;
+/// What is left of a cap or a storage that is as good as nothing for a reason to name it.
+const AS_GOOD_AS_NONE_M3: f64 = 250.0;
+/// A line is solved again when the storage has strayed from it by so much, by a spill.
+const STRAYED_M3: f64 = 20.0;
+/// How far a running release may be over the ramp that ends with the window and still be let ramp
+/// down: the engine steps by the minute, and a plan is dated back to the grid.
+const LATE_S: f64 = 120.0;
 
 /// The state that is carried from minute to minute.
 struct Walk<'a> {
     problem: &'a Problem<'a>,
     path: Path,
     volume: f64,
-    flow: f64,
+    mode: Mode,
+    throttle: Throttle,
+    ledgers: Vec<Ledger>,
+    /// Released in this period.
+    used: f64,
 }
 
-pub(crate) fn walk(problem: &Problem, policy: &Policy) -> Path {
-    let flow = problem.request.flow_now.get();
-    let mut walk = Walk { problem, path: Path::default(), volume: problem.volume_now, flow };
-    let mut t = problem.request.span.start();
-    walk.path.volumes.push((t, walk.volume));
-    let mut mode = if flow > 0.0 { GRAVITY } else { SHUT };
-    for (n, w) in problem.windows.iter().enumerate() {
-        if w.flow.start() > t {
-            walk.fill(t, w.flow.start());
-            (mode, walk.flow) = (SHUT, 0.0);
+/// The line that a period is on, from some slot.
+struct OnLine {
+    solved: Option<Solved>,
+    volume: f64,
+    used: f64,
+}
+
+pub(crate) fn walk(problem: &Problem, after: &[ToGo]) -> Path {
+    let request = problem.request;
+    let start = request.span.start();
+    let running = request.flow_now.get() > 0.0;
+    let ledger = |c| Ledger::new(c, start, running);
+    let mut walk = Walk {
+        problem,
+        path: Path::default(),
+        volume: problem.volume_now,
+        mode: if running { Mode::Open(0) } else { Mode::Shut },
+        throttle: Throttle { flow_m3_s: request.flow_now.get(), closing: None },
+        ledgers: request.caps.iter().map(ledger).collect(),
+        used: 0.0,
+    };
+    walk.path.volumes.push((start, walk.volume));
+    let mut t = start;
+    for (n, period) in problem.periods.iter().enumerate() {
+        if period.start() > t {
+            walk.shut();
+            walk.fill(t, period.start());
         }
-        let same_tide = problem.windows[..n].iter().any(|o| o.tide == w.tide);
-        let mut used = if same_tide { walk.path.in_tide(&problem.windows, w.tide) } else { 0.0 };
-        for (slot, after) in w.slots.iter().zip(&policy.after[n]) {
-            let state = (walk.volume, used);
-            mode = best(problem, w, slot, mode, state, after, policy.volume_step);
-            used += walk.slot(n, slot, mode, used);
-        }
-        t = w.flow.end();
+        walk.period(n, period, &after[n]);
+        t = period.end();
     }
-    walk.fill(t, problem.request.span.end());
+    walk.fill(t, request.span.end());
+    let kept = (walk.volume - problem.volume_low).max(0.0);
+    walk.path.cost += kept * problem.prices.stored_at_end_m3;
     walk.path
 }
 
-/// The cheapest choice; of equal ones the first, which is to stay shut.
-fn best(
-    problem: &Problem,
-    w: &ReleaseWindow,
-    slot: &Window,
-    from: Mode,
-    (volume, used): (f64, f64),
-    after: &crate::dp::Layer,
-    step: f64,
-) -> Mode {
-    let mut best = (f64::INFINITY, SHUT);
-    for to in choices(problem, from) {
-        let p = problem.pass(w, slot, to, volume, used);
-        let cost = p.cost + after.at(to, p.used, p.volume / step) + switching(from, to);
-        if cost < best.0 - 1e-12 {
-            best = (cost, to);
-        }
-    }
-    best.1
-}
-
 impl Walk<'_> {
+    fn shut(&mut self) {
+        self.mode = Mode::Shut;
+        self.throttle = Throttle::SHUT;
+    }
+
     fn fill(&mut self, from: Utc, to: Utc) {
         let mut t = from;
         while t < to {
             let next = (t.floor_to(SLOT) + SLOT).min(to);
-            self.add_inflow(t, next, 0.0);
+            self.gain(t, next, 0.0);
             t = next;
         }
     }
 
-    fn add_inflow(&mut self, from: Utc, to: Utc, released: f64) {
-        let inflow = self.problem.inflow_m3(from, to);
-        self.path.inflow_m3 += inflow;
-        let (kept, spilled) = self.problem.spilled(self.volume + inflow - released);
+    fn gain(&mut self, from: Utc, to: Utc, released: f64) {
+        let gain = self.problem.inflow_m3(from, to) - released;
+        let spilled = self.problem.spilled(self.volume + gain).1;
+        let (kept, cost) = self.problem.kept(self.volume, gain, (to - from).as_hours());
         if spilled > 0.0 {
             match self.path.spills.last_mut().filter(|s| s.1 == from) {
                 Some(spill) => (spill.1, spill.2) = (to, spill.2 + spilled),
@@ -134,92 +152,252 @@ impl Walk<'_> {
             }
         }
         self.volume = kept;
+        self.path.cost += cost;
         self.path.volumes.push((to, kept));
     }
 
-    /// One slot, minute by minute; gives what was released.
-    fn slot(&mut self, n: usize, slot: &Window, mode: Mode, used: f64) -> f64 {
-        let p = self.problem;
-        let w = &p.windows[n];
-        let level_m = p.storage.level_m(self.volume);
-        let (mut released, mut kwh) = (0.0, 0.0);
-        let (mut target, mut limited) = (0.0, Limited::Shut);
-        let mut t = slot.start();
-        while t < slot.end() {
-            let next = (t + MINUTE).min(slot.end());
-            let dt = (next - t).as_seconds();
-            let (aim, why) = self.aim(w, t, mode, used + released);
-            let inflow = p.inflow_m3(t, next);
-            let above = (self.volume + inflow - p.volume_low).max(0.0);
-            let left = (w.allotment_m3 - used - released).max(0.0);
-            let volume = (aim * dt).min(above).min(left);
-            let why = if volume >= aim * dt { why } else { short(above, left, why) };
-            if aim > target || limited == Limited::Shut {
-                (target, limited) = (aim, why);
+    fn period(&mut self, n: usize, period: &Period, after: &ToGo) {
+        self.used = 0.0;
+        let whole = Window::new(period.start(), period.end()).expect("a period has slots");
+        let by_long = self.ledgers.iter().map(|l| (l.left_by_end(&whole), Some(l.clause)));
+        let least = by_long.fold((period.allotment_m3, None), |a, b| if b.0 < a.0 { b } else { a });
+        self.path.allotments.push(least);
+        let mut on = OnLine { solved: None, volume: f64::NAN, used: 0.0 };
+        let mut inflow = 0.0;
+        for (i, s) in period.slots.iter().enumerate() {
+            let strayed = (self.volume + self.used - inflow - on.volume - on.used).abs();
+            if i == 0 || strayed > STRAYED_M3 {
+                let left = least.0 - self.used;
+                let begun = period.begun || self.used > 0.0;
+                let solved = self.problem.solve_line(period, i, self.volume, left, begun, after);
+                on = OnLine { solved, volume: self.volume, used: self.used };
+                inflow = 0.0;
             }
-            self.flow = volume / dt;
-            released += volume;
-            if mode > GRAVITY {
-                kwh += p.pump_kw(mode - GRAVITY) * dt / 3600.0;
-            }
-            self.add_inflow(t, next, volume);
-            t = next;
+            self.slot(n, period, i, &on);
+            inflow += s.inflow_m3;
         }
-        self.path.steps.push(Step {
-            slot: *slot,
-            window: n,
-            mode,
-            target_m3_s: target,
-            released_m3: released,
-            energy_kwh: kwh,
-            limited,
-            level_m,
-        });
-        released
+        self.used = 0.0;
     }
 
-    /// The flow to aim at in this minute, and what limits it.
-    fn aim(&self, w: &ReleaseWindow, t: Utc, mode: Mode, used: f64) -> (f64, Limited) {
-        let p = self.problem;
-        if mode == SHUT {
-            return (0.0, Limited::Shut);
-        }
-        let level_m = p.storage.level_m(self.volume);
-        let gravity = p.gravity_m3_s(level_m, t);
-        let pumped = if mode > GRAVITY { p.pumped_m3_s(mode - GRAVITY) } else { 0.0 };
-        let able = gravity.max(pumped);
-        let mut best = if able < w.flow_aim_m3_s {
-            (able, if pumped >= gravity { Limited::Pump } else { Limited::Head })
-        } else {
-            (w.flow_aim_m3_s, Limited::Cap)
+    /// What is left for a release in this piece, and the cap that leaves no more.
+    fn left(&self, period: &Period, piece: &Window) -> (f64, Option<ClauseId>) {
+        let tide = ((period.allotment_m3 - self.used).max(0.0), period.volume_by);
+        let long = self.ledgers.iter().map(|l| (l.left(piece), Some(l.clause)));
+        long.fold(tide, |a, b| if b.0 < a.0 { b } else { a })
+    }
+
+    /// Decides on one slot and carries it out.
+    fn slot(&mut self, n: usize, period: &Period, i: usize, on: &OnLine) {
+        let s = &period.slots[i];
+        let left = self.left(period, &s.slot);
+        self.decide(period, i, on, left.0);
+        let volume_start = self.volume;
+        let step = Step {
+            slot: s.slot,
+            period: n,
+            window: s.window,
+            does: Does::Idle(self.idle(s, left)),
+            released_m3: 0.0,
+            energy_kwh: 0.0,
+            volume_start,
+            volume_middle: volume_start,
         };
-        // A fixed-speed pump cannot be ramped; everything else is.
-        if pumped < gravity || pumped == 0.0 {
-            let middle = t + Span::seconds(30);
-            let ramp = p.ramp_m3_s2;
-            let left_s = (w.flow.end() - middle).as_seconds().max(0.0);
-            let rising = self.flow + ramp * 60.0;
-            let tail = (2.0 * ramp * (w.allotment_m3 - used).max(0.0)).sqrt();
-            for (limit, why) in [
-                (ramp * left_s, Limited::Ramp),
-                (rising, Limited::Ramp),
-                (tail, Limited::Allotment),
-            ] {
-                if limit < best.0 {
-                    best = (limit, why);
-                }
+        let step = match self.mode {
+            Mode::Shut => {
+                self.gain(s.slot.start(), s.slot.end(), 0.0);
+                step
+            }
+            Mode::Open(pumps) => self.release(period, s, pumps, step),
+        };
+        self.path.steps.push(step);
+    }
+
+    fn idle(&self, s: &SlotData, (left, clause): (f64, Option<ClauseId>)) -> Idle {
+        let none = AS_GOOD_AS_NONE_M3;
+        match clause {
+            _ if s.window.is_none() => Idle::Between,
+            Some(clause) if left < none => Idle::Used(clause),
+            _ if self.volume - self.problem.volume_low < none => Idle::Low,
+            _ if !self.problem.head_lasts(self.volume, s.outer_most_m) => Idle::NoHead,
+            _ => Idle::Waiting,
+        }
+    }
+
+    fn decide(&mut self, period: &Period, i: usize, on: &OnLine, left: f64) {
+        let s = &period.slots[i];
+        let Some(w) = s.window else { return self.shut() };
+        let flow = self.throttle.flow_m3_s;
+        let left_s = (self.problem.windows[w].flow.end() - s.slot.start()).as_seconds();
+        // Too late to ramp down in time: the engine shuts it, and the plan asks for nothing.
+        if flow > self.problem.ramp_m3_s2 * (left_s + LATE_S) {
+            return self.shut();
+        }
+        let ramp = self.problem.ramp_m3_s2;
+        match self.mode {
+            Mode::Open(pumps) if self.throttle.closing.is_some() || self.must_close(s, pumps) => {
+                self.throttle.close(ramp);
+                let carried = self.problem.head_lasts(self.volume, s.outer_most_m)
+                    && self.problem.may_change(s, period.tide, pumps, 0, self.volume);
+                self.mode = Mode::Open(if carried { 0 } else { pumps });
+            }
+            _ => match self.best(period, i, on, left) {
+                Mode::Shut if self.mode == Mode::Shut => {}
+                Mode::Shut => self.throttle.close(ramp),
+                open => self.open(open),
+            },
+        }
+        if self.throttle.is_shut() {
+            self.shut();
+        }
+    }
+
+    /// Gravity alone, and the head may be gone by the time that a closing begun after this slot has
+    /// ended and the lead is over.
+    fn must_close(&self, s: &SlotData, pumps: usize) -> bool {
+        if pumps > 0 {
+            return false;
+        }
+        let p = self.problem;
+        let ramp_s = self.throttle.flow_m3_s / p.ramp_m3_s2;
+        let until = s.slot.end() + p.request.closing_lead + Span::from_seconds_f64(ramp_s);
+        let drawn = self.throttle.flow_m3_s * (s.slot.length().as_seconds() + ramp_s);
+        !p.head_lasts(self.volume - drawn, p.outer_most_m(s.slot.start(), until))
+    }
+
+    /// Counts strokes and starts.
+    fn open(&mut self, to: Mode) {
+        let prices = &self.problem.prices;
+        let count = |m| if let Mode::Open(p) = m { p } else { 0 };
+        if self.mode == Mode::Shut {
+            self.path.cost += if self.used > 0.0 { prices.reopening } else { prices.opening };
+        }
+        let starts = count(to).saturating_sub(count(self.mode));
+        self.path.cost += prices.pump_start * starts as f64;
+        self.mode = to;
+    }
+
+    /// The cheapest choice; of equal ones the first, which is to stay shut.
+    fn best(&self, period: &Period, i: usize, on: &OnLine, left: f64) -> Mode {
+        let Some(solved) = on.solved.as_ref().filter(|_| left >= WORTH_M3) else {
+            return Mode::Shut;
+        };
+        debug_assert!(i >= solved.first_slot());
+        let (p, s) = (self.problem, &period.slots[i]);
+        let used = self.used - on.used;
+        let hours = s.slot.length().as_hours();
+        let cost_shut =
+            p.kept(self.volume, s.inflow_m3, hours).1 + solved.at(i + 1, Mode::Shut, used);
+        let mut best = match self.mode {
+            Mode::Open(pumps) if pumps > 0 && !s.pumps_may_change => (f64::INFINITY, Mode::Shut),
+            _ => (cost_shut, Mode::Shut),
+        };
+        for to in 0..=p.pumps.len() {
+            let Some(cost) = self.cost_open(period, i, solved, used, to, left) else { continue };
+            if cost < best.0 - 1e-9 {
+                best = (cost, Mode::Open(to));
             }
         }
-        best
+        best.1
     }
-}
 
-const fn short(above: f64, left: f64, otherwise: Limited) -> Limited {
-    if left <= above {
-        Limited::Allotment
-    } else if above.is_finite() {
-        Limited::StorageLow
-    } else {
-        otherwise
+    /// Cost of having `to` pumps in slot `i`, or of opening with them; `None` if it may not be.
+    fn cost_open(
+        &self,
+        period: &Period,
+        i: usize,
+        solved: &Solved,
+        used: f64,
+        to: usize,
+        left: f64,
+    ) -> Option<f64> {
+        let p = self.problem;
+        let s = &period.slots[i];
+        let (from, open_s) = match self.mode {
+            Mode::Open(from) => (from, None),
+            Mode::Shut => (0, Some(0.0)),
+        };
+        if !p.may_change(s, period.tide, from, to, self.volume)
+            || (to > from && !self.runs_long(period, s, to, left))
+        {
+            return None;
+        }
+        // An opening is followed along its ramp, as the backward pass did.
+        let slots = if open_s.is_some() { p.ramp_slots(period, i) } else { 1 };
+        let (mut v, mut out, mut cost, mut open_s) = (self.volume, 0.0, 0.0, open_s);
+        for s in &period.slots[i..i + slots] {
+            let x = p.passes(s, period.tide, to, v, open_s)?;
+            let (kept, more) = p.kept(v, s.inflow_m3 - x, s.slot.length().as_hours());
+            cost += more + p.energy(s, period.tide, to);
+            open_s = open_s.map(|e| e + s.slot.length().as_seconds());
+            (v, out) = (kept, out + x);
+        }
+        let prices = &p.prices;
+        let again = period.begun || self.used > 0.0;
+        let stroke = match self.mode {
+            Mode::Open(_) => 0.0,
+            Mode::Shut if again => prices.reopening,
+            Mode::Shut => prices.opening,
+        };
+        let starts = prices.pump_start * to.saturating_sub(from) as f64;
+        Some(cost + stroke + starts + solved.at(i + slots, Mode::Open(to), used + out))
+    }
+
+    /// Whether what is left lets a pump that starts now run for its least time.
+    fn runs_long(&self, period: &Period, s: &SlotData, pumps: usize, left: f64) -> bool {
+        let p = self.problem;
+        let Some(w) = s.window else { return false };
+        let flow = p.pumped_m3_s(pumps, period.tide).max(self.throttle.flow_m3_s);
+        let (ramp_s, run_s) = (flow / p.ramp_m3_s2, p.pump_run_min.as_seconds());
+        let needs_m3 = flow * (run_s + ramp_s / 2.0);
+        let left_s = (p.windows[w].flow.end() - s.slot.start()).as_seconds();
+        left >= needs_m3 && self.volume - p.volume_low >= needs_m3 && left_s >= run_s + ramp_s
+    }
+
+    /// One slot of flow, minute by minute.
+    fn release(&mut self, period: &Period, s: &SlotData, pumps: usize, step: Step) -> Step {
+        let p = self.problem;
+        let w = &p.windows[s.window.expect("a release lies in a window")];
+        let pumped = p.pumped_m3_s(pumps, period.tide);
+        let target_m3_s = self.throttle.most(p.ramp_m3_s2, w, &s.slot);
+        let (mut released, mut most, mut volume_middle) = (0.0, (0.0, Bound::Ramp), self.volume);
+        let mut ran = Span::ZERO;
+        let mut t = s.slot.start();
+        while t < s.slot.end() && self.mode != Mode::Shut {
+            let piece = Window::new(t, (t + MINUTE).min(s.slot.end())).expect("a minute");
+            let (left, clause) = self.left(period, &piece);
+            let room = Room {
+                volume: self.volume,
+                inflow_m3: p.inflow_m3(piece.start(), piece.end()),
+                left_m3: left,
+                left_by: clause,
+                pumped_m3_s: pumped,
+            };
+            let (out, bound) = self.throttle.pass(p, w, &piece, &room);
+            self.ledgers.iter_mut().for_each(|l| l.add(&piece, out));
+            self.used += out;
+            released += out;
+            if out > most.0 {
+                most = (out, bound);
+            }
+            self.gain(piece.start(), piece.end(), out);
+            if piece.start() <= s.slot.start() + s.slot.length().scaled(0.5) {
+                volume_middle = self.volume;
+            }
+            ran += piece.length();
+            t = piece.end();
+            if self.throttle.is_shut() {
+                self.shut();
+            }
+        }
+        if t < s.slot.end() {
+            self.gain(t, s.slot.end(), 0.0);
+        }
+        let energy_kwh = p.pump_kw(pumps, period.tide) * ran.as_hours();
+        self.path.cost += energy_kwh * p.prices.energy_per_kwh;
+        if released <= 0.0 {
+            return step;
+        }
+        let does = Does::Release { pumps, target_m3_s, bound: most.1 };
+        Step { does, released_m3: released, energy_kwh, volume_middle, ..step }
     }
 }

@@ -1,0 +1,4 @@
+//! Tests over the whole of a plan.
+
+mod figures;
+mod fixture;
