@@ -1,8 +1,8 @@
 //! One integration crate. `validation`: against published figures. `scenarios`: stories through the
 //! engine. `faults`: what breaks. `compat`: old forms still read. `house`: the house rules.
 
-mod validation;
-mod scenarios;
-mod faults;
 mod compat;
+mod faults;
 mod house;
+mod scenarios;
+mod validation;

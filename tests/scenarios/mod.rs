@@ -1,1 +1,3 @@
-//! To be filled.
+//! Stories: a named site and tide through the engine.
+
+pub mod tarrow;
