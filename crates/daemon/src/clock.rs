@@ -161,7 +161,10 @@ mod tests {
         let (trust, news) = watch.look(t + Span::hours(1), b + second * 2);
         assert_eq!(trust, ClockTrust::Distrusted);
         assert!(news.is_some_and(|n| n.contains("stepped")));
-        assert_eq!(watch.look(t + Span::hours(1) + second, b + second * 3).0, ClockTrust::Distrusted);
+        assert_eq!(
+            watch.look(t + Span::hours(1) + second, b + second * 3).0,
+            ClockTrust::Distrusted
+        );
         watch.vouch();
         assert_eq!(watch.look(t + Span::hours(2), b + second * 4).0, ClockTrust::Trusted);
     }

@@ -240,6 +240,11 @@ impl State {
         self.assets[asset.index()].command.is_some()
     }
 
+    /// Whether feedback shows the asset at rest (shut or stopped).
+    pub fn at_rest(&self, asset: AssetId, boot: Mono) -> bool {
+        crate::decide::at_rest(self, asset, boot)
+    }
+
     pub(crate) fn outlet_no(&self, asset: AssetId) -> Option<usize> {
         self.site.outlets.iter().position(|o| o.gate == asset || o.pumps.contains(&asset))
     }

@@ -7,8 +7,9 @@ use crate::cli::{Exit, SiteArgs};
 
 pub fn check(args: &SiteArgs) -> Result<Exit> {
     let Some(site) = load(&args.site, args.json) else { return Ok(Exit::BadInput) };
+    let notes = site::check_notes(&site);
     if args.json {
-        println!("{}", serde_json::json!({ "site": site.name, "faults": [] }));
+        println!("{}", serde_json::json!({ "site": site.name, "faults": [], "notes": notes }));
     } else {
         println!("{} ({}): no faults", site.title, site.name);
         println!("  {} assets, {} signals, {} adapters", site.assets.len(), site.signals.len(), {
@@ -16,6 +17,10 @@ pub fn check(args: &SiteArgs) -> Result<Exit> {
         });
         println!("  licence {}: {} clauses", site.licence.reference, site.licence.clauses.len());
         println!("  constants of {} hold {}", site.port.name, site.port.valid);
+        for note in &notes {
+            let bars = if note.bars_automatic { " (mend this before automatic)" } else { "" };
+            println!("  note {} {}: {}{bars}", note.code, note.subject, note.text);
+        }
     }
     Ok(Exit::Done)
 }
@@ -23,22 +28,8 @@ pub fn check(args: &SiteArgs) -> Result<Exit> {
 /// All faults of the files, as text or as a JSON list.
 pub fn print_report(report: &site::Report, json: bool) {
     if json {
-        println!("{}", report_json(report));
+        println!("{}", serde_json::json!({ "faults": report.faults }));
     } else {
         eprintln!("{report}");
     }
-}
-
-fn report_json(report: &site::Report) -> serde_json::Value {
-    let faults: Vec<_> = report
-        .faults()
-        .iter()
-        .map(|f| {
-            serde_json::json!({
-                "code": f.code, "file": f.file, "line": f.line, "column": f.column,
-                "value": f.value, "rule": f.rule, "remedy": f.remedy,
-            })
-        })
-        .collect();
-    serde_json::json!({ "faults": faults })
 }

@@ -102,11 +102,6 @@ fn offline(site: &Arc<Site>, at: Utc, level_m: f64) -> Result<Plan> {
 fn calm(site: &Site, at: Utc, level_m: f64) -> Vec<Reading> {
     let level = |s: &model::Signal| site.storages.iter().any(|o| o.level_signals.contains(&s.id));
     let value = |s: &model::Signal| if level(s) { level_m } else { s.value_min };
-    let read = |s: &model::Signal| Reading {
-        signal: s.id,
-        value: value(s),
-        source_good: true,
-        at,
-    };
+    let read = |s: &model::Signal| Reading { signal: s.id, value: value(s), source_good: true, at };
     site.signals.iter().map(read).collect()
 }

@@ -25,3 +25,22 @@ pub struct PlantArgs {
     #[arg(long)]
     pub speed: u32,
 }
+
+pub fn plant(args: &PlantArgs) -> Result<Exit> {
+    simulated_plant::run_plant(&simulated_plant::PlantArgs {
+        site: args.site.clone(),
+        folder: args.dir.clone(),
+        clock: simulated_plant::ClockMap {
+            real_boot_origin_ns: args.real_boot_origin_ns,
+            sim_boot_origin_ns: args.sim_boot_origin_ns,
+            sim_utc_origin_us: args.sim_utc_origin_us,
+            speed: args.speed,
+        },
+    })?;
+    Ok(Exit::Done)
+}
+
+pub fn adapter() -> Result<Exit> {
+    simulated_plant::run_adapter()?;
+    Ok(Exit::Done)
+}

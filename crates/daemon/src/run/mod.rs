@@ -1,7 +1,10 @@
 //! `run`: the daemon. Events in, effects out; it decides nothing.
 
 mod acts;
+mod asked;
+mod input;
 mod open;
+mod plant_events;
 mod shell;
 mod speak;
 mod workers;

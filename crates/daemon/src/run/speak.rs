@@ -3,6 +3,7 @@
 
 use engine::State;
 use model::Site;
+use record::Row;
 use units::Utc;
 
 /// Once there is a plan: when the next windows are, and what to type next.
@@ -39,7 +40,11 @@ pub fn welcome(site: &Site, state: &State, now: Utc, site_arg: &str) {
     );
 }
 
-/// One committed row, its number first.
-pub fn row(line: &str, number: u64, utc: Utc) {
-    println!("row {number} {utc} {line}");
+/// One committed row, its number first. Without `all`, only what a person would want to see go by.
+pub fn row(row: &Row, all: bool) {
+    use record::kind;
+    let quiet = [kind::RELEASED, kind::PLAN_ADOPTED, kind::OUTCOME, kind::CONFIRMED, kind::INTENT];
+    if all || !quiet.contains(&row.kind) {
+        println!("row {} {} {}", row.seq, row.utc, record::describe(row));
+    }
 }

@@ -40,7 +40,10 @@ fn audited(site: &Site, request: &model::PlanRequest, plan: model::Plan) -> Prod
 }
 
 /// Starts the worker; jobs go in by the sender, products come out to `to`.
-pub fn start<T: From<Done> + Send + 'static>(site: Arc<Site>, to: Sender<T>) -> Result<Sender<Job>> {
+pub fn start<T: From<Done> + Send + 'static>(
+    site: Arc<Site>,
+    to: Sender<T>,
+) -> Result<Sender<Job>> {
     let (jobs, queue): (Sender<Job>, Receiver<Job>) = channel();
     thread::Builder::new().name("worker".to_owned()).spawn(move || {
         for job in queue {

@@ -38,10 +38,8 @@ pub fn now_view(state: &State, stamp: &Stamp) -> NowView {
 }
 
 fn adapters(state: &State) -> Vec<AdapterView> {
-    let view = |a: &model::Adapter| AdapterView {
-        name: a.name.clone(),
-        up: state.adapter_up(a.id),
-    };
+    let view =
+        |a: &model::Adapter| AdapterView { name: a.name.clone(), up: state.adapter_up(a.id) };
     state.site().adapters.iter().map(view).collect()
 }
 
@@ -158,11 +156,9 @@ fn next(state: &State, now: Utc) -> Vec<NextView> {
 fn type_next(state: &State) -> Vec<String> {
     let order = |what: &str| format!("tidereeve order SITE {what} --by NAME --reason TEXT");
     match state.mode() {
-        Mode::Observe => vec![
-            "tidereeve plan SITE".to_owned(),
-            order("mode automatic"),
-            order("mode advise"),
-        ],
+        Mode::Observe => {
+            vec!["tidereeve plan SITE".to_owned(), order("mode automatic"), order("mode advise")]
+        }
         Mode::Advise => vec![order("confirm ASSET"), order("mode observe")],
         Mode::Automatic => vec!["tidereeve why SITE ASSET".to_owned(), order("mode observe")],
     }
@@ -282,7 +278,11 @@ fn asked_for(decision: &Decision) -> String {
     match decision.goal {
         None => "rest".to_owned(),
         Some(Goal { setpoint, hand, .. }) => {
-            format!("{} by the {}", setpoint_words(&setpoint), if hand { "operator" } else { "plan" })
+            format!(
+                "{} by the {}",
+                setpoint_words(&setpoint),
+                if hand { "operator" } else { "plan" }
+            )
         }
     }
 }
@@ -290,9 +290,46 @@ fn asked_for(decision: &Decision) -> String {
 fn in_words(site: &Site, decision: &Decision) -> String {
     let name = &site.asset(decision.asset).name;
     if decision.active() {
-        return format!("{name} moves water: {}, and nothing stands against it", asked_for(decision));
+        return format!(
+            "{name} moves water: {}, and nothing stands against it",
+            asked_for(decision)
+        );
     }
     let causes: Vec<String> = decision.causes.iter().map(|c| say::cause(site, c)).collect();
-    let all = if causes.len() > 1 { "all of these would have to change" } else { "this would have to change" };
+    let all = if causes.len() > 1 {
+        "all of these would have to change"
+    } else {
+        "this would have to change"
+    };
     format!("{name} is at rest; {all}: {}", causes.join(" | "))
+}
+
+/// Why the plan has the asset as it will be at a later instant.
+pub fn why_planned(state: &State, asset: AssetId, at: Utc) -> Option<WhyView> {
+    let site = state.site();
+    let no = site.outlets.iter().position(|o| o.gate == asset || o.pumps.contains(&asset))?;
+    let slot = state.plan(no)?.slot_at(asset, at)?;
+    let name = site.asset(asset).name.clone();
+    let setpoint = setpoint_words(&slot.setpoint);
+    let why = reason_words(site, &slot.why);
+    Some(WhyView {
+        in_words: format!(
+            "{name} will be {setpoint}: {why} (plan; guard and interlock still rule)"
+        ),
+        asset: name,
+        at: at.to_string(),
+        active: slot.setpoint.is_active(),
+        asked_for: setpoint,
+        causes: Vec::new(),
+    })
+}
+
+/// A row of the record for programs.
+pub fn row_json(row: &record::Row) -> serde_json::Value {
+    let hash: String = row.hash.iter().map(|b| format!("{b:02x}")).collect();
+    serde_json::json!({
+        "seq": row.seq, "term": row.term, "utc": row.utc.to_string(),
+        "kind": record::kind::name(row.kind), "subject": row.subject, "cause": row.cause,
+        "words": record::describe(row), "hash": hash,
+    })
 }

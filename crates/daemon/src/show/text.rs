@@ -31,7 +31,10 @@ pub fn print_now(v: &NowView) {
     println!();
     for s in &v.storages {
         let level = s.level_m.map_or("no good level".to_owned(), |l| format!("{l:.2} m"));
-        println!("{}: {level} (high alarm {:.2}, spills at {:.2})", s.name, s.high_alarm_m, s.spill_m);
+        println!(
+            "{}: {level} (high alarm {:.2}, spills at {:.2})",
+            s.name, s.high_alarm_m, s.spill_m
+        );
     }
     for a in &v.assets {
         let position = a.position_percent.map_or("not read".to_owned(), |p| format!("{p:.0} %"));

@@ -132,3 +132,17 @@ pub struct CauseView {
     pub is: String,
     pub must_be: String,
 }
+
+impl WhyView {
+    /// From a row of the record.
+    pub fn recorded(asset: &str, at: units::Utc, seq: u64, words: &str) -> Self {
+        Self {
+            asset: asset.to_owned(),
+            at: at.to_string(),
+            active: words.contains("open to") || words.contains(": run"),
+            asked_for: String::new(),
+            causes: Vec::new(),
+            in_words: format!("row {seq} of the record: {words}"),
+        }
+    }
+}

@@ -1,0 +1,32 @@
+//! Everything that comes to the loop, in one queue.
+
+use host::HostEvent;
+use journal::Reply;
+
+use super::workers::Done;
+use crate::control::Asked;
+
+#[derive(Debug)]
+pub enum Input {
+    Host(HostEvent),
+    Journal(Reply),
+    Asked(Asked),
+    Done(Done),
+    Stop,
+}
+
+impl From<Reply> for Input {
+    fn from(r: Reply) -> Self {
+        Self::Journal(r)
+    }
+}
+impl From<Asked> for Input {
+    fn from(a: Asked) -> Self {
+        Self::Asked(a)
+    }
+}
+impl From<Done> for Input {
+    fn from(d: Done) -> Self {
+        Self::Done(d)
+    }
+}
