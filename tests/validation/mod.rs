@@ -4,5 +4,7 @@ mod site_delaware;
 mod structures;
 mod structures_pumps;
 mod structures_table;
-
 mod tide;
+mod tide_delaware;
+mod tide_hat_lat;
+mod tide_port_ansel;

@@ -16,7 +16,7 @@ pub(crate) struct CurrentKnot {
     pub peak_m_s: f64,
 }
 
-/// The level at `t`; before the first and after the last turn that turn's own level.
+/// The level at `t`, which must lie between the first and the last turn (NaN outside).
 pub(crate) fn level_m(turns: &[Turn], t: Utc) -> f64 {
     let n = turns.partition_point(|turn| turn.at <= t);
     match (n.checked_sub(1).map(|i| &turns[i]), turns.get(n)) {
@@ -25,12 +25,12 @@ pub(crate) fn level_m(turns: &[Turn], t: Utc) -> f64 {
             let (from, to) = (a.level.get(), b.level.get());
             from + (to - from) * (1.0 - cos(core::f64::consts::PI * share)) / 2.0
         }
-        (Some(only), None) | (None, Some(only)) => only.level.get(),
-        (None, None) => f64::NAN,
+        _ => f64::NAN,
     }
 }
 
-/// The current at `t`, m/s positive seaward; still before the first and after the last turn.
+/// The current at `t`, m/s positive seaward; `t` must lie between the first and the last turn (NaN
+/// outside).
 pub(crate) fn current_m_s(knots: &[CurrentKnot], t: Utc) -> f64 {
     let n = knots.partition_point(|k| k.turn.at <= t);
     match (n.checked_sub(1).map(|i| &knots[i]), knots.get(n)) {
@@ -38,6 +38,9 @@ pub(crate) fn current_m_s(knots: &[CurrentKnot], t: Utc) -> f64 {
             let share = (t - a.turn.at).as_seconds() / (b.turn.at - a.turn.at).as_seconds();
             a.peak_m_s * sin(core::f64::consts::PI * share)
         }
-        _ => 0.0,
+        _ => f64::NAN,
     }
 }
+
+#[cfg(test)]
+mod tests;

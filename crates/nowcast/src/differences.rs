@@ -2,16 +2,47 @@
 //! spring figure.
 //!
 //! **Source**: the secondary-port method of official tide tables (UK Hydrographic Office NP 159; US
-//! NOAA/NOS tide tables, table 2; from memory), in its range-weighted form. Clause by clause the
-//! weight is w = (R - Rn)/(Rs - Rn), kept within -0.6 and 1.6; outside 0 to 1 the spread grows.
+//! NOAA/NOS tide tables, table 2; from memory), in its range-weighted form. The weight is
+//! w = (R - Rn)/(Rs - Rn), kept within -0.6 and 1.6; outside 0 to 1 the spread grows. Which range R is
+//! (the ebb's or the flood's) stands at each law below.
+
+use core::fmt;
 
 use model::{
     CurrentTurn, LowLevel, Method, NeapSpring, PlaceForecast, PlaceId, TideNumber, Turn, TurnKind,
 };
-use units::{Level, Metres, MetresPerSecond, Series, Span, Window};
+use units::{BadSeries, Level, Metres, MetresPerSecond, Series, Span, Utc, Window};
 
 use crate::curve;
 use crate::port::PortTide;
+
+/// A place that could not be forecast.
+#[derive(Clone, PartialEq, Debug)]
+pub enum PlaceError {
+    /// The turns at the place do not reach over the whole span: the port was not predicted far
+    /// enough, or the lags are longer than a day.
+    NotCovered {
+        span: Window,
+        turns: Option<(Utc, Utc)>,
+    },
+    Series(BadSeries),
+}
+
+impl fmt::Display for PlaceError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Self::NotCovered { span, turns: Some((first, last)) } => write!(
+                f,
+                "its turns reach from {first} to {last} and not over all of {span}; look at its lags"
+            ),
+            Self::NotCovered { span, turns: None } => {
+                write!(f, "it has no turn at all that could serve {span}")
+            }
+            Self::Series(e) => write!(f, "{e}"),
+        }
+    }
+}
+impl std::error::Error for PlaceError {}
 
 /// A way from the port's tide to a place's.
 pub trait PortToPlace {
@@ -22,7 +53,7 @@ pub trait PortToPlace {
         port: &PortTide,
         place: PlaceId,
         span: &Window,
-    ) -> Result<PlaceForecast, units::BadSeries>;
+    ) -> Result<PlaceForecast, PlaceError>;
 }
 
 /// Tabulated differences.
@@ -106,36 +137,42 @@ impl Differences<'_> {
         self.spread(Turn { at, level: Level::of(level), ..*port }, weight)
     }
 
-    /// When the current turns, and how fast it runs between. The seaward turn and the ebb go by the
-    /// ebb range; the landward turn by the same ebb's low water; the flood by the flood range.
+    /// When the current turns, and how fast it runs between. The seaward turn and the ebb's peak go
+    /// by the ebb range (high water to the following low water). The landward turn goes by the ebb
+    /// that comes to its end there, as the low water itself does, so that the two keep together;
+    /// the flood's peak goes by the flood range (low water to the following high water).
     fn current_turns(&self, port: &PortTide) -> Vec<curve::CurrentKnot> {
         let Some(current) = &self.0.current else { return Vec::new() };
+        let range = &self.0.range;
         let mut knots = Vec::new();
-        for (i, turn) in port.turns.iter().enumerate() {
-            let Some(next) = port.turns.get(i + 1) else { continue };
-            let weight =
-                Weight::of(Metres::of((turn.level - next.level).get().abs()), &self.0.range);
-            let high = turn.kind == TurnKind::High;
-            let lag = if high {
-                weight.span(&current.seaward_after_port_high)
+        for three in port.turns.windows(3) {
+            let [before, turn, next] = three else { continue };
+            let (ebb, flood) = (before.level - turn.level, next.level - turn.level);
+            let to_seaward = turn.kind == TurnKind::High;
+            let (placed_by, lag, peak_m_s) = if to_seaward {
+                let by = Weight::of(-flood, range);
+                (by, by.span(&current.seaward_after_port_high), by.speed(&current.peak_ebb))
             } else {
-                // The lag at low water is tabulated by the ebb that comes to its end there.
-                let before = i.checked_sub(1).map_or(turn, |p| &port.turns[p]);
-                let ebb = Weight::of(before.level - turn.level, &self.0.range);
-                ebb.span(&current.landward_after_port_low)
+                let by = Weight::of(ebb, range);
+                let speed = Weight::of(flood, range).speed(&current.peak_flood);
+                (by, by.span(&current.landward_after_port_low), -speed)
             };
-            let peak = if high {
-                weight.speed(&current.peak_ebb)
-            } else {
-                -weight.speed(&current.peak_flood)
-            };
-            let time_sd = self.0.time_sd.scaled(weight.widen);
+            let time_sd = self.0.time_sd.scaled(placed_by.widen);
             let number: TideNumber = turn.number;
-            let to = CurrentTurn { number, to_seaward: high, at: turn.at + lag, time_sd };
-            knots.push(curve::CurrentKnot { turn: to, peak_m_s: peak });
+            let turn = CurrentTurn { number, to_seaward, at: turn.at + lag, time_sd };
+            knots.push(curve::CurrentKnot { turn, peak_m_s });
         }
         knots.sort_by_key(|k| k.turn.at);
         knots
+    }
+}
+
+/// The grid reaches up to one step past the end of the span.
+fn covers(span: &Window, first: Option<Utc>, last: Option<Utc>) -> Result<(), PlaceError> {
+    let turns = first.zip(last);
+    match turns {
+        Some((first, last)) if first <= span.start() && span.end() + GRID < last => Ok(()),
+        _ => Err(PlaceError::NotCovered { span: *span, turns }),
     }
 }
 
@@ -145,14 +182,20 @@ impl PortToPlace for Differences<'_> {
         port: &PortTide,
         place: PlaceId,
         span: &Window,
-    ) -> Result<PlaceForecast, units::BadSeries> {
+    ) -> Result<PlaceForecast, PlaceError> {
         let turns = self.turns(port);
+        covers(span, turns.first().map(|t| t.at), turns.last().map(|t| t.at))?;
+        let level = Series::sampled(span, GRID, |t| curve::level_m(&turns, t));
         let knots = self.current_turns(port);
-        let level = Series::sampled(span, GRID, |t| curve::level_m(&turns, t))?;
-        let current = match knots.is_empty() {
-            true => None,
-            false => Some(Series::sampled(span, GRID, |t| curve::current_m_s(&knots, t))?),
+        let current = match &self.0.current {
+            None => None,
+            Some(_) => {
+                covers(span, knots.first().map(|k| k.turn.at), knots.last().map(|k| k.turn.at))?;
+                let sampled = Series::sampled(span, GRID, |t| curve::current_m_s(&knots, t));
+                Some(sampled.map_err(PlaceError::Series)?)
+            }
         };
+        let level = level.map_err(PlaceError::Series)?;
         Ok(PlaceForecast {
             place,
             method: Method::Differences,

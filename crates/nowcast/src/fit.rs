@@ -2,8 +2,9 @@
 //! tide by tide, with straight lines on the range. Arithmetic without weather.
 
 use core::fmt;
+use std::collections::BTreeMap;
 
-use model::{CurrentDifferences, LowLevel, NeapSpring, Turn, TurnKind};
+use model::{CurrentDifferences, LowLevel, NeapSpring, TideNumber, Turn, TurnKind};
 use tide::Predictor;
 use units::{Metres, MetresPerSecond, Span, Window};
 
@@ -35,8 +36,16 @@ pub struct Station<'a> {
 }
 
 /// Fits high- and low-water differences of `place` on the ebb range of `port` over `span`, read off
-/// at the ranges `at`. Currents are not in constants of levels: they are assumed to turn
-/// `turn_after` the place's own high and low water, with the peaks given.
+/// at the ranges `at` (usually the mean neap and spring range, 2(M2 - S2) and 2(M2 + S2)). The
+/// spreads are those that the lines leave, the greater of high and low water; they know no weather.
+///
+/// Turns are paired by tide number, for a place that is up to an hour before or eleven hours after
+/// the port by its M2. Currents are not in constants of levels: they are assumed to turn
+/// `turn_after` the place's own high and low water, with the peaks given for neap and spring alike.
+///
+/// Refused: fewer than ten tides, or tides that all have one range.
+///
+/// **Source**: least squares; the form of the table is the secondary-port method (common practice).
 pub fn differences_from_constants(
     port: Station,
     place: Station,
@@ -94,12 +103,15 @@ struct Pair {
     ebb_range_m: f64,
 }
 
-/// Turns of one kind and one number at both; ranges by the port's own ebb.
+/// Turns of one kind and one tide at both, with the port's ebb range of that tide.
 fn pairs(port: Station, place: Station, span: &Window) -> Vec<Pair> {
+    let carry = number_carry(port.m2_phase_lag_deg, place.m2_phase_lag_deg);
+    let wide = Window::new(span.start() - Span::days(1), span.end() + Span::days(1))
+        .expect("a span stays a span when it is widened");
     let a = numbered(&port.predictor.turns(span), port.m2_phase_lag_deg);
-    let b = numbered(&place.predictor.turns(span), place.m2_phase_lag_deg);
-    // The two stations count from their own phase lags: the offset is the one that pairs turns
-    // in the order in which the wave comes, less than a tide apart.
+    let b = numbered(&place.predictor.turns(&wide), place.m2_phase_lag_deg);
+    let by_tide: BTreeMap<(TideNumber, bool), &Turn> =
+        b.iter().map(|t| ((t.number, t.kind == TurnKind::High), t)).collect();
     let mut list = Vec::new();
     for ebb in a.windows(2) {
         let [high, low] = ebb else { continue };
@@ -108,13 +120,23 @@ fn pairs(port: Station, place: Station, span: &Window) -> Vec<Pair> {
         }
         let ebb_range_m = (high.level - low.level).get();
         for turn in [high, low] {
-            let mate = b.iter().find(|t| {
-                t.kind == turn.kind && t.at >= turn.at && t.at - turn.at < Span::hours(12)
-            });
-            list.extend(mate.map(|m| Pair { port: *turn, place: *m, ebb_range_m }));
+            let mate = by_tide.get(&(turn.number + carry, turn.kind == TurnKind::High));
+            list.extend(mate.map(|m| Pair { port: *turn, place: **m, ebb_range_m }));
         }
     }
     list
+}
+
+/// A place whose M2 comes up to so much before the port's is taken as early, not as eleven hours
+/// late. 30 degrees are one hour.
+const EARLY_DEG: f64 = 30.0;
+
+/// What to add to the port's tide number for the same wave at the place: each counts from its own
+/// phase lag, and a wave that passes 360 degrees on its way gets one more there.
+fn number_carry(port_lag_deg: f64, place_lag_deg: f64) -> TideNumber {
+    let later = (place_lag_deg - port_lag_deg).rem_euclid(360.0);
+    let later = if later > 360.0 - EARLY_DEG { later - 360.0 } else { later };
+    ((port_lag_deg + later - place_lag_deg) / 360.0).round() as TideNumber
 }
 
 struct Line {
@@ -151,3 +173,6 @@ fn line<'a>(
     let left: f64 = points.iter().map(|p| p.1 - offset - slope * p.0).map(|r| r * r).sum();
     Ok(Line { offset, slope, sd: (left / (n - 2.0)).sqrt() })
 }
+
+#[cfg(test)]
+mod tests;

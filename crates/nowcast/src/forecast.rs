@@ -4,9 +4,9 @@ use core::fmt;
 
 use model::{Forecast, PlaceForecast, Site};
 use tide::TideError;
-use units::{BadSeries, Digest, Span, Utc, Window};
+use units::{Digest, Series, Span, Utc, Window};
 
-use crate::differences::{Differences, GRID, PortToPlace};
+use crate::differences::{Differences, GRID, PlaceError, PortToPlace};
 use crate::port::{PortTide, port_tide, tides};
 
 #[derive(Clone, PartialEq, Debug)]
@@ -17,7 +17,11 @@ pub enum ForecastError {
         valid: Window,
     },
     Tide(TideError),
-    Series(BadSeries),
+    /// A place, by its name.
+    Place {
+        place: String,
+        error: PlaceError,
+    },
 }
 
 impl fmt::Display for ForecastError {
@@ -29,7 +33,7 @@ impl fmt::Display for ForecastError {
                  constants"
             ),
             Self::Tide(e) => write!(f, "the tide at the port: {e}"),
-            Self::Series(e) => write!(f, "a curve of the forecast: {e}"),
+            Self::Place { place, error } => write!(f, "the forecast at {place:?}: {error}"),
         }
     }
 }
@@ -52,7 +56,8 @@ pub fn forecast(site: &Site, as_of: Utc, span: Window) -> Result<Forecast, Forec
     let port_level = port.predictor.series(&span, GRID).map_err(ForecastError::Tide)?;
     let each = site.places.iter().map(|p| {
         let way = Differences(&p.differences);
-        way.place_forecast(&port, p.id, &span).map_err(ForecastError::Series)
+        way.place_forecast(&port, p.id, &span)
+            .map_err(|error| ForecastError::Place { place: p.name.clone(), error })
     });
     let places: Vec<PlaceForecast> = each.collect::<Result<_, _>>()?;
     let all = tides(&port.turns);
@@ -60,7 +65,7 @@ pub fn forecast(site: &Site, as_of: Utc, span: Window) -> Result<Forecast, Forec
     Ok(Forecast {
         as_of,
         span,
-        digest: digest(site, as_of, &span, &port, &places),
+        digest: digest(site, as_of, &span, &port, &port_level, &places),
         port_turns: port.turns,
         tides,
         port_level,
@@ -68,11 +73,13 @@ pub fn forecast(site: &Site, as_of: Utc, span: Window) -> Result<Forecast, Forec
     })
 }
 
+/// Over what it was made from (by the site's own digest) and every turn and curve that came out.
 fn digest(
     site: &Site,
     as_of: Utc,
     span: &Window,
     port: &PortTide,
+    port_level: &Series,
     places: &[PlaceForecast],
 ) -> u64 {
     let mut d = Digest::new();
@@ -80,9 +87,14 @@ fn digest(
     d.i64(span.start().as_micros()).i64(span.end().as_micros());
     for t in port.turns.iter().chain(places.iter().flat_map(|p| &p.turns)) {
         d.i64(t.number).i64(t.at.as_micros()).f64(t.level.get());
+        d.i64(t.time_sd.as_micros()).f64(t.level_sd.get());
     }
-    for place in places {
-        place.level.values().iter().for_each(|v| {
+    for t in places.iter().flat_map(|p| &p.current_turns) {
+        d.i64(t.number).i64(t.at.as_micros()).i64(t.time_sd.as_micros());
+    }
+    let curves = places.iter().flat_map(|p| [Some(&p.level), p.current.as_ref()]).flatten();
+    for curve in core::iter::once(port_level).chain(curves) {
+        curve.values().iter().for_each(|v| {
             d.f64(*v);
         });
     }

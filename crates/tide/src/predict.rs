@@ -131,3 +131,6 @@ fn middle_of_year(t: Utc) -> Utc {
     let (a, b) = (start(year), start(year + 1));
     a + Span::micros((b - a).as_micros() / 2)
 }
+
+#[cfg(test)]
+mod tests;

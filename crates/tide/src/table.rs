@@ -75,3 +75,6 @@ impl Row {
         (sum + 90.0 * f64::from(self.quarter_turns)).rem_euclid(360.0)
     }
 }
+
+#[cfg(test)]
+mod tests;
