@@ -26,6 +26,8 @@ pub struct Decision {
     pub(crate) guarded: Option<Guarded>,
     /// The interlock sends it to rest, whatever else.
     pub(crate) forced: bool,
+    /// The plan itself asks for rest now.
+    pub(crate) planned_rest: bool,
 }
 
 /// What is asked for.
@@ -46,12 +48,10 @@ impl Decision {
         let volume = |about| {
             matches!(about, About::VolumeThisTide | About::VolumeRolling | About::VolumeMonth)
         };
-        !self.forced
-            && self.causes.iter().all(|c| match c.by {
-                By::Plan => true,
-                By::Clause(_) => volume(c.fact.about),
-                _ => false,
-            })
+        // When the plan asks for rest, its one cause (the clause behind the slot, say) is no hold.
+        let by_plan = self.planned_rest && self.causes.len() == 1;
+        let by_volume = |c: &Cause| matches!(c.by, By::Clause(_)) && volume(c.fact.about);
+        !self.forced && (by_plan || (!self.planned_rest && self.causes.iter().all(by_volume)))
     }
 }
 
@@ -64,7 +64,8 @@ pub fn decide(state: &State, stamp: &Stamp, asset: AssetId) -> Decision {
     let mut causes = Vec::new();
     people(state, stamp, asset, &mut causes);
     let goal = goal(state, stamp, asset, &mut causes);
-    let mut decision = Decision { asset, goal, causes, guarded: None, forced: false };
+    let planned_rest = goal.is_none() && state.assets[asset.index()].hand.is_none();
+    let mut decision = Decision { asset, goal, causes, guarded: None, forced: false, planned_rest };
     let active = state.active(asset);
     if let Some(goal) = goal {
         if !goal.hand {

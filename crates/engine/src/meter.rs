@@ -55,7 +55,9 @@ fn add(
     let mut from = piece.start();
     while from < piece.end() {
         let start = from.floor_to(BUCKET);
-        let to = piece.end().min(start + BUCKET);
+        // Flow belongs to its instant: a piece across low water is split between the tides.
+        let turn = state.forecast.as_deref().and_then(|f| f.tide_at(from)).map(|t| t.window.end());
+        let to = piece.end().min(start + BUCKET).min(turn.unwrap_or(piece.end()));
         let bucket = Window::new(start, start + BUCKET).expect("a bucket is not empty");
         if state.meters[no].bucket != Some(bucket) {
             close_bucket(state, no, from, effects);
@@ -66,9 +68,10 @@ fn add(
         meter.volume += volume;
         meter.estimated |= estimated && volume > 0.0;
         // The sums know of it at once; the record gets the bucket when it is whole.
+        let moment = Window::new(from, to).expect("a piece is not empty");
         if volume > 0.0 {
-            let tide = tide_at(state, start);
-            state.tallies.add(bucket, CubicMetres::of(volume), tide);
+            let tide = tide_at(state, from);
+            state.tallies.add(moment, CubicMetres::of(volume), tide);
         }
         from = to;
     }

@@ -20,6 +20,8 @@ use crate::state::State;
 pub(crate) const RAMP_STEP: Span = Span::minutes(1);
 /// Below this a gate that closes goes shut, m3/s: less than meters tell from nothing.
 const FLOW_SHUT_M3_S: f64 = 0.03;
+/// A metered flow this near to the one aimed at is left alone: each correction is a stroke.
+const NEAR_ENOUGH: f64 = 0.04;
 /// The trim stays within a factor that no honest model misses by.
 const TRIM_LEAST: f64 = 0.6;
 const TRIM_MOST: f64 = 1.6;
@@ -134,6 +136,9 @@ pub(crate) fn next_opening(
     if flow < FLOW_SHUT_M3_S && flow < prev {
         return Some(Percent::ZERO);
     }
+    if (flow - prev).abs() < NEAR_ENOUGH * prev / 2.0 && near_enough(state, stamp, asset) {
+        return None;
+    }
     let opening = set(state, asset, goal, flow)?;
     let least = state.site.settings.opening_step_min.get();
     ((opening.get() - now.get()).abs() >= least).then_some(opening)
@@ -141,6 +146,13 @@ pub(crate) fn next_opening(
 
 fn since_order(state: &State, stamp: &Stamp, asset: AssetId) -> Option<Span> {
     state.assets[asset.index()].last_move.map(|t| stamp.boot.since(t))
+}
+
+fn near_enough(state: &State, stamp: &Stamp, asset: AssetId) -> bool {
+    let aimed = state.assets[asset.index()].flow_target;
+    let outlet = state.site.outlet_of(asset);
+    let metered = outlet.and_then(|o| state.metered_flow(o, stamp.utc));
+    metered.is_some_and(|m| (m / aimed.max(1e-6) - 1.0).abs() <= NEAR_ENOUGH)
 }
 
 /// Where a good meter differs from the flow aimed at, the model's opening is corrected, a little at
@@ -157,7 +169,11 @@ fn learn_trim(
     let slot = &state.assets[asset.index()];
     let aimed = slot.flow_target;
     let full = opening_for(target_m3_s, openings, aimed) * slot.trim >= 99.0;
-    if aimed < 0.1 || metered < 0.05 || (full && metered <= aimed) {
+    if aimed < 0.1
+        || metered < 0.05
+        || (full && metered <= aimed)
+        || (metered / aimed - 1.0).abs() <= NEAR_ENOUGH
+    {
         return;
     }
     // The gate lags a ramp by less than a step of it, so a growing flow is not read as a fault.

@@ -13,7 +13,8 @@ const GRID: Span = Span::minutes(5);
 const FORECAST_EVERY: Span = Span::hours(6);
 /// A plan is made anew this often, and at once when something that it rests on has changed.
 const PLAN_EVERY: Span = Span::minutes(30);
-/// A storage level this far from the plan's own asks for a new plan.
+/// A storage level this far from the plan's own asks for a new plan, but not more often than this.
+const STRAY_EVERY: Span = Span::minutes(15);
 const LEVEL_STRAY_M: f64 = 0.05;
 /// Seen and answered within this, for the latest safe start of a closing (rule 2).
 const DETECTION: Span = Span::seconds(60);
@@ -57,7 +58,7 @@ fn level_strays(state: &State, stamp: &Stamp, outlet: usize) -> bool {
     let site = &state.site;
     let measured = state.storage_level(&site.outlets[outlet], stamp.utc);
     let planned = plan.level.at(stamp.utc);
-    let fresh = plan.as_of + GRID > stamp.utc;
+    let fresh = plan.as_of + STRAY_EVERY > stamp.utc;
     !fresh && measured.zip(planned).is_some_and(|(m, p)| (m - p).abs() > LEVEL_STRAY_M)
 }
 
@@ -149,7 +150,7 @@ pub(crate) fn adopt_forecast(state: &mut State, forecast: Forecast) {
     state.want_plan();
 }
 
-pub(crate) fn adopt_plan(state: &mut State, stamp: &Stamp, plan: Plan, effects: &mut Effects) {
+pub(crate) fn adopt_plan(state: &mut State, plan: Plan, effects: &mut Effects) {
     let Some((outlet, _)) = state.jobs.plan.take() else { return };
     let worth = |p: &Plan| {
         let total: f64 = p.shortfalls.iter().map(|s| s.volume.get()).sum();
@@ -174,7 +175,6 @@ pub(crate) fn adopt_plan(state: &mut State, stamp: &Stamp, plan: Plan, effects: 
             effects.notices.push(Notice { severity: Severity::Alarm, text });
         }
     }
-    let _ = stamp;
     state.plans[outlet] = Some(plan);
 }
 

@@ -28,11 +28,11 @@ pub fn step(state: &mut State, stamp: &Stamp, event: Event, effects: &mut Effect
             let adapter = state.site.adapters[adapter.index()].name.clone();
             effects.records.push(Entry::AdapterUp { adapter });
         }
-        Event::AdapterDown { adapter, why } => adapter_down(state, adapter, why, effects),
+        Event::AdapterDown { adapter, why } => adapter_down(state, stamp, adapter, why, effects),
         Event::Outcome { command, outcome } => outcome_of(state, command, outcome, effects),
         Event::Act(act) => acts::take(state, stamp, act, effects),
         Event::JobDone { job, product } => {
-            product_of(state, stamp, job, product, effects);
+            product_of(state, job, product, effects);
         }
         Event::JournalLost { why } => {
             let text = format!("the journal is lost: {why}; nothing new starts");
@@ -90,13 +90,19 @@ fn frame(state: &mut State, stamp: &Stamp, readings: &[Reading]) {
     }
 }
 
-fn adapter_down(state: &mut State, adapter: model::AdapterId, why: String, effects: &mut Effects) {
+fn adapter_down(
+    state: &mut State,
+    stamp: &Stamp,
+    adapter: model::AdapterId,
+    why: String,
+    effects: &mut Effects,
+) {
     state.adapters_up[adapter.index()] = false;
     // Its points are bad the moment it is gone, and what it was told is unknown.
-    for signal in &state.site.signals {
-        if signal.adapter == adapter {
-            state.raw[signal.id.index()] = None;
-        }
+    for signal in state.site.signals.iter().filter(|s| s.adapter == adapter) {
+        state.raw[signal.id.index()] = None;
+        let gone = Reading { signal: signal.id, value: 0.0, source_good: false, at: stamp.utc };
+        state.validator.take(&gone, stamp.utc);
     }
     for asset in state.site.assets.iter().filter(|a| a.adapter == adapter) {
         if let Some(c) = &mut state.assets[asset.id.index()].command {
@@ -136,19 +142,13 @@ fn outcome_of(state: &mut State, command: u64, outcome: Outcome, effects: &mut E
     effects.records.push(Entry::Outcome { asset, command, outcome });
 }
 
-fn product_of(
-    state: &mut State,
-    stamp: &Stamp,
-    job: model::JobId,
-    product: Product,
-    effects: &mut Effects,
-) {
+fn product_of(state: &mut State, job: model::JobId, product: Product, effects: &mut Effects) {
     match product {
         Product::Forecast(f) if state.jobs.forecast == Some(job) => {
             schedule::adopt_forecast(state, *f);
         }
         Product::Plan(p) if state.jobs.plan.is_some_and(|(_, j)| j == job) => {
-            schedule::adopt_plan(state, stamp, *p, effects);
+            schedule::adopt_plan(state, *p, effects);
         }
         Product::Failed(why) => {
             if state.jobs.forecast == Some(job) {

@@ -173,16 +173,16 @@ impl<A: Adapter, W: Write> Session<A, W> {
 
     fn leases(&mut self) {
         for point in self.rules.run_out(self.clock.boot_ns()) {
-            self.to_rest(&point, RestCause::LeaseOut);
+            self.rest_point(&point, RestCause::LeaseOut);
         }
     }
 
     fn all_to_rest(&mut self, cause: RestCause) {
         let points: Vec<String> = self.rules.drivable().map(|p| p.id.clone()).collect();
-        points.iter().for_each(|p| self.to_rest(p, cause));
+        points.iter().for_each(|p| self.rest_point(p, cause));
     }
 
-    fn to_rest(&mut self, point: &str, cause: RestCause) {
+    fn rest_point(&mut self, point: &str, cause: RestCause) {
         let Some(rest) = self.rules.point(point).and_then(|p| p.rest) else { return };
         let action = match cause {
             RestCause::LeaseOut => rest.lease_out,

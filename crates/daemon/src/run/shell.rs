@@ -73,7 +73,8 @@ impl Shell {
     /// Runs until it is told to stop.
     pub fn run(mut self) -> Result<Exit> {
         let carried = self.carried.take().unwrap_or_default();
-        self.look_at_clock();
+        let (utc, boot) = (self.parts.clock.utc(), self.parts.clock.boot());
+        self.trust = self.parts.watch.look(utc, boot).0;
         self.feed(Event::Started(Box::new(carried)))?;
         loop {
             match self.parts.inbox.recv_timeout(self.sleep()) {
@@ -109,7 +110,8 @@ impl Shell {
         let before = self.trust;
         let (trust, news) = self.parts.watch.look(utc, boot);
         self.trust = trust;
-        if let Some(why) = news.or_else(|| (trust != before).then(|| format!("{trust:?}"))) {
+        let changed = || format!("the clock's synchronisation says {trust:?}");
+        if let Some(why) = news.or_else(|| (trust != before).then(changed)) {
             tracing::warn!(%why, "clock");
             if let Err(e) = self.feed(Event::ClockChanged { why }) {
                 tracing::error!(error = %e, "the clock's change could not be taken in");
