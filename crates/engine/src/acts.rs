@@ -108,7 +108,7 @@ fn set_mode(
     effects.records.push(Entry::ModeChanged { mode, why });
     let not_yet = match state.armed {
         Some(true) => String::new(),
-        _ => format!("; not armed yet: {}", state.armed_reasons.join("; ")),
+        _ => format!("; not armed yet: {}", state.armed_words().join("; ")),
     };
     Ok(format!("mode is {}{not_yet}", mode.words()))
 }

@@ -1,6 +1,7 @@
 //! Armed: computed at every step, with all the reasons when it is not.
 
 use interlock::ClockTrust;
+use model::About;
 
 use crate::state::State;
 use crate::{Effects, Entry, Mode, Notice, Severity, Stamp};
@@ -8,12 +9,11 @@ use crate::{Effects, Entry, Mode, Notice, Severity, Stamp};
 pub(crate) fn review(state: &mut State, stamp: &Stamp, effects: &mut Effects) {
     let reasons = reasons_against(state, stamp);
     let armed = reasons.is_empty();
-    if state.armed != Some(armed) || (!armed && reasons != state.armed_reasons) {
-        if state.armed != Some(armed) {
-            effects.records.push(Entry::Armed { armed, reasons: reasons.clone() });
-        }
-        state.armed = Some(armed);
-        state.armed_reasons = reasons;
+    let news = state.armed != Some(armed);
+    (state.armed, state.armed_reasons) = (Some(armed), reasons);
+    if news {
+        let reasons = state.armed_words();
+        effects.records.push(Entry::Armed { armed, reasons });
     }
     expire(state, stamp, effects);
     if armed && state.safe_latch.is_none() {
@@ -21,40 +21,46 @@ pub(crate) fn review(state: &mut State, stamp: &Stamp, effects: &mut Effects) {
     }
 }
 
-fn reasons_against(state: &State, stamp: &Stamp) -> Vec<String> {
+fn reasons_against(state: &State, stamp: &Stamp) -> Vec<(About, String)> {
     let mut reasons = Vec::new();
     if let Some((_, why)) = &state.journal_lost {
-        reasons.push(format!("the journal is lost: {why}"));
+        reasons.push((About::Journal, format!("the journal is lost: {why}")));
     }
     if stamp.trust == ClockTrust::Distrusted {
-        reasons.push("the clock is not trusted".to_owned());
+        reasons.push((About::ClockTrust, "the clock is not trusted".to_owned()));
     }
     if let Err(case) = state.self_test {
-        reasons.push(format!("the interlock's self-test failed: {case}"));
+        reasons.push((About::Latch, format!("the interlock's self-test failed: {case}")));
     }
     if !state.site.port.valid.contains(stamp.utc) {
-        reasons.push(format!("the tide constants hold for {} only", state.site.port.valid));
+        let words = format!("the tide constants hold for {} only", state.site.port.valid);
+        reasons.push((About::Forecast, words));
     }
     for adapter in &state.site.adapters {
         if !state.adapters_up[adapter.id.index()] {
-            reasons.push(format!("adapter {} is down", adapter.name));
+            let words = format!("adapter {} is down", adapter.name);
+            reasons.push((About::Adapter(adapter.id), words));
         }
     }
     for asset in &state.site.assets {
         if state.position(asset.id, stamp.boot).is_none() {
-            reasons.push(format!("the position of {} is not read back", asset.name));
+            let words = format!("the position of {} is not read back", asset.name);
+            reasons.push((About::Signal(asset.position), words));
         }
     }
     for outlet in &state.site.outlets {
         let storage = state.site.storage(outlet.storage);
         if state.storage_level(outlet, stamp.utc).is_none() {
-            reasons.push(format!("no good level of {}", storage.name));
+            let first = storage.level_signals.first().copied();
+            let about = first.map_or(About::Latch, About::Signal);
+            reasons.push((about, format!("no good level of {}", storage.name)));
         }
         if let Some(s) = outlet.outer_signal
             && state.validator.state(s, stamp.utc).now().is_none()
         {
             let words = state.validator.state(s, stamp.utc).quality.words();
-            reasons.push(format!("{} is {words}", state.site.signal(s).name));
+            let words = format!("{} is {words}", state.site.signal(s).name);
+            reasons.push((About::Signal(s), words));
         }
     }
     reasons

@@ -88,7 +88,7 @@ fn people(state: &State, stamp: &Stamp, asset: AssetId, causes: &mut Vec<Cause>)
         let is = Is::Words(format!("held until {until}"));
         causes.push(cause(By::Person, About::Hold(asset), is, MustBe::Words("no hold")));
     }
-    if let Some((_, why)) = &state.journal_lost {
+    if let Some((_, why)) = state.journal_lost.as_ref().filter(|_| state.active(asset)) {
         let is = Is::Words(format!("lost: {why}"));
         causes.push(cause(By::Armed, About::Journal, is, MustBe::Words("kept")));
     }
@@ -195,9 +195,13 @@ fn program(state: &State, asset: AssetId, goal: &Goal, active: bool, causes: &mu
         }
         Mode::Advise | Mode::Automatic => {}
     }
-    if !active && state.armed != Some(true) {
-        let is = Is::Words(state.armed_reasons.join("; "));
+    if !active && state.armed.is_none() {
+        let is = Is::Words("not looked at yet".to_owned());
         causes.push(cause(By::Armed, About::Latch, is, MustBe::Words("armed")));
+    }
+    for (about, words) in state.armed_reasons.iter().filter(|_| !active) {
+        let is = Is::Words(words.clone());
+        causes.push(cause(By::Armed, *about, is, MustBe::Words("mended")));
     }
 }
 

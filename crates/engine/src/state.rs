@@ -5,8 +5,8 @@ use std::sync::Arc;
 use interlock::{Action, GateRules, Kind, PermitLife, PumpRules, Rules};
 use licence::Tallies;
 use model::{
-    Asset, AssetId, AssetKind, Cause, Forecast, JobId, Lawful, Outlet, Plan, PlanId, Site, Term,
-    TideNumber,
+    About, Asset, AssetId, AssetKind, Cause, Forecast, JobId, Lawful, Outlet, Plan, PlanId, Site,
+    Term, TideNumber,
 };
 use signals::Validator;
 use units::{CubicMetres, Digest, Mono, Percent, Span, Utc, Window};
@@ -36,7 +36,8 @@ pub struct State {
     /// A standing authorisation that will set automatic once the site is armed.
     pub(crate) resume: Option<StandingAuthorisation>,
     pub(crate) armed: Option<bool>,
-    pub(crate) armed_reasons: Vec<String>,
+    /// What each reason is about, and its words.
+    pub(crate) armed_reasons: Vec<(About, String)>,
     pub(crate) self_test: Result<(), &'static str>,
     pub(crate) adapters_up: Vec<bool>,
     pub(crate) validator: Validator,
@@ -195,8 +196,11 @@ impl State {
         self.trust
     }
     /// Whether the site is armed, and if not, all the reasons.
-    pub fn armed(&self) -> (bool, &[String]) {
-        (self.armed == Some(true), &self.armed_reasons)
+    pub fn armed(&self) -> (bool, Vec<String>) {
+        (self.armed == Some(true), self.armed_words())
+    }
+    pub(crate) fn armed_words(&self) -> Vec<String> {
+        self.armed_reasons.iter().map(|(_, words)| words.clone()).collect()
     }
     pub fn safe_latch(&self) -> Option<&str> {
         self.safe_latch.as_deref()

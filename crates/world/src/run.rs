@@ -228,7 +228,8 @@ impl World {
         Ok(())
     }
 
-    fn frame(&self) -> Vec<Reading> {
+    /// What the plant's sensors say now, as a frame.
+    pub fn frame(&self) -> Vec<Reading> {
         let sensed = self.setup.plant.sense();
         let signals = self.setup.site.signals.iter().zip(&self.setup.points);
         let read = |(s, p): (&model::Signal, &Point)| {

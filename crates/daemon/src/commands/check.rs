@@ -9,17 +9,17 @@ pub fn check(args: &SiteArgs) -> Result<Exit> {
     let Some(site) = load(&args.site, args.json) else { return Ok(Exit::BadInput) };
     let notes = site::check_notes(&site);
     if args.json {
-        println!("{}", serde_json::json!({ "site": site.name, "faults": [], "notes": notes }));
+        say!("{}", serde_json::json!({ "site": site.name, "faults": [], "notes": notes }));
     } else {
-        println!("{} ({}): no faults", site.title, site.name);
-        println!("  {} assets, {} signals, {} adapters", site.assets.len(), site.signals.len(), {
+        say!("{} ({}): no faults", site.title, site.name);
+        say!("  {} assets, {} signals, {} adapters", site.assets.len(), site.signals.len(), {
             site.adapters.len()
         });
-        println!("  licence {}: {} clauses", site.licence.reference, site.licence.clauses.len());
-        println!("  constants of {} hold {}", site.port.name, site.port.valid);
+        say!("  licence {}: {} clauses", site.licence.reference, site.licence.clauses.len());
+        say!("  constants of {} hold {}", site.port.name, site.port.valid);
         for note in &notes {
             let bars = if note.bars_automatic { " (mend this before automatic)" } else { "" };
-            println!("  note {} {}: {}{bars}", note.code, note.subject, note.text);
+            say!("  note {} {}: {}{bars}", note.code, note.subject, note.text);
         }
     }
     Ok(Exit::Done)
@@ -28,7 +28,7 @@ pub fn check(args: &SiteArgs) -> Result<Exit> {
 /// All faults of the files, as text or as a JSON list.
 pub fn print_report(report: &site::Report, json: bool) {
     if json {
-        println!("{}", serde_json::json!({ "faults": report.faults }));
+        say!("{}", serde_json::json!({ "faults": report.faults }));
     } else {
         eprintln!("{report}");
     }

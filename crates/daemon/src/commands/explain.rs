@@ -14,7 +14,7 @@ pub struct ExplainArgs {
 pub fn explain(args: &ExplainArgs) -> Result<Exit> {
     match site::explain(&args.code) {
         Some(e) => {
-            println!("{}: {}\n\n{}", e.code, e.title, e.text);
+            say!("{}: {}\n\n{}", e.code, e.title, e.text);
             Ok(Exit::Done)
         }
         None => {

@@ -65,9 +65,9 @@ fn verify(args: &SiteArgs) -> Result<Exit> {
     };
     match journal::verify(&dir, &mut progress) {
         Ok(v) if args.json => {
-            println!("{}", serde_json::json!({ "rows": v.rows, "head": v.head_hex }));
+            say!("{}", serde_json::json!({ "rows": v.rows, "head": v.head_hex }));
         }
-        Ok(v) => println!("{} rows, the chain holds; head {}", v.rows, v.head_hex),
+        Ok(v) => say!("{} rows, the chain holds; head {}", v.rows, v.head_hex),
         Err(e) => {
             eprintln!("error: {:#}", anyhow::Error::from(e));
             return Ok(Exit::Findings);
@@ -126,10 +126,10 @@ fn file_page(dir: &std::path::Path, from_seq: u64) -> Result<Vec<Value>> {
 
 fn print_row(row: &Value, json: bool) {
     if json {
-        println!("{row}");
+        say!("{row}");
         return;
     }
     let text = |key: &str| row.get(key).and_then(Value::as_str).unwrap_or_default();
     let seq = row.get("seq").and_then(Value::as_u64).unwrap_or_default();
-    println!("{seq:>7} {} {}", text("utc"), text("words"));
+    say!("{seq:>7} {} {}", text("utc"), text("words"));
 }

@@ -9,7 +9,7 @@ use crate::show::{NowView, print_now};
 
 pub fn now(args: &SiteArgs) -> Result<Exit> {
     match from_daemon::<NowView>(args, &Request::Now)? {
-        Ok(view) if args.json => println!("{}", serde_json::to_string_pretty(&view)?),
+        Ok(view) if args.json => say!("{}", serde_json::to_string_pretty(&view)?),
         Ok(view) => print_now(&view),
         Err(exit) => return Ok(exit),
     }

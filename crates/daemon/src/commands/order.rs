@@ -85,8 +85,8 @@ pub fn order(args: &OrderArgs) -> Result<Exit> {
     };
     let request = Request::Act { by: args.by.clone(), reason: args.reason.clone(), act };
     match from_daemon::<Value>(&args.site, &request)? {
-        Ok(answer) if args.site.json => println!("{answer}"),
-        Ok(answer) => println!("{}", answer.as_str().unwrap_or_default()),
+        Ok(answer) if args.site.json => say!("{answer}"),
+        Ok(answer) => say!("{}", answer.as_str().unwrap_or_default()),
         Err(exit) => return Ok(exit),
     }
     Ok(Exit::Done)

@@ -41,13 +41,13 @@ pub fn plan(args: &PlanArgs) -> Result<Exit> {
             let site = Arc::new(site);
             let made = offline(&site, at.unwrap_or_else(|| Clock::real().utc()), level)?;
             if !args.site.json {
-                println!("no daemon asked: with the storage at {level:.2} m, and all available\n");
+                say!("no daemon asked: with the storage at {level:.2} m, and all available\n");
             }
             plan_view(&site, &made)
         }
     };
     if args.site.json {
-        println!("{}", serde_json::to_string_pretty(&view)?);
+        say!("{}", serde_json::to_string_pretty(&view)?);
     } else {
         print_plan(&view);
     }

@@ -43,16 +43,16 @@ pub fn tides(args: &TidesArgs) -> Result<Exit> {
     let local = args.span.local.then_some(&site.zone);
     if args.site.json {
         let rows: Vec<_> = turns.iter().map(|t| turn_json(t)).collect();
-        println!("{}", serde_json::json!({ "place": name, "datum": site.datum, "turns": rows }));
+        say!("{}", serde_json::json!({ "place": name, "datum": site.datum, "turns": rows }));
     } else if args.csv {
-        print!("utc,kind,level_m,time_sd_min,level_sd_m,tide\r\n");
+        say!(part "utc,kind,level_m,time_sd_min,level_sd_m,tide\r\n");
         for t in turns {
             let (time, level) = (t.time_sd.as_minutes(), t.level_sd.get());
             let kind = kind(t.kind);
-            print!("{},{kind},{:.3},{time:.1},{level:.2},{}\r\n", t.at, t.level.get(), t.number);
+            say!(part "{},{kind},{:.3},{time:.1},{level:.2},{}\r\n", t.at, t.level.get(), t.number);
         }
     } else {
-        println!("{name}, levels above {}; predicted, no surge", site.datum);
+        say!("{name}, levels above {}; predicted, no surge", site.datum);
         let mut out = table(&["time", "", "level m", "+-min", "+-m", "tide"]);
         for t in turns {
             out.add_row(vec![
@@ -64,7 +64,7 @@ pub fn tides(args: &TidesArgs) -> Result<Exit> {
                 t.number.to_string(),
             ]);
         }
-        println!("{out}");
+        say!("{out}");
     }
     Ok(Exit::Done)
 }

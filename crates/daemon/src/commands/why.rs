@@ -21,7 +21,7 @@ pub struct WhyArgs {
 pub fn why(args: &WhyArgs) -> Result<Exit> {
     let request = Request::Why { asset: args.asset.clone(), at: args.at.clone() };
     match from_daemon::<WhyView>(&args.site, &request)? {
-        Ok(view) if args.site.json => println!("{}", serde_json::to_string_pretty(&view)?),
+        Ok(view) if args.site.json => say!("{}", serde_json::to_string_pretty(&view)?),
         Ok(view) => print_why(&view),
         Err(exit) => return Ok(exit),
     }

@@ -34,7 +34,7 @@ pub fn windows(args: &WindowsArgs) -> Result<Exit> {
         }
     }
     if args.site.json {
-        println!("{}", serde_json::json!({ "outlets": json }));
+        say!("{}", serde_json::json!({ "outlets": json }));
     }
     Ok(Exit::Done)
 }
@@ -47,7 +47,7 @@ fn edge_words(site: &Site, edge: &Edge) -> String {
 
 fn print(site: &Site, name: &str, lawful: &Lawful, usable: &Usable, local: bool) {
     let zone = local.then_some(&site.zone);
-    println!("{name}: lawful windows, by the licence's own words ({})", site.licence.reference);
+    say!("{name}: lawful windows, by the licence's own words ({})", site.licence.reference);
     let mut out =
         table(&["opens", "by", "shuts", "by", "tide", "range m", "m3/s", "m3 a tide", "by"]);
     for w in &lawful.windows {
@@ -63,17 +63,17 @@ fn print(site: &Site, name: &str, lawful: &Lawful, usable: &Usable, local: bool)
             w.volume_max.map_or("-".to_owned(), |c| site.licence.clause(c.clause).number.clone()),
         ]);
     }
-    println!("{out}");
+    say!("{out}");
     for n in &lawful.nil {
         let number = &site.licence.clause(n.clause).number;
-        println!("tide {}: no release (clause {number}, range {:.1})", n.tide, n.range_rounded);
+        say!("tide {}: no release (clause {number}, range {:.1})", n.tide, n.range_rounded);
     }
-    println!("\n{name}: usable windows, when the water lets a full storage out");
+    say!("\n{name}: usable windows, when the water lets a full storage out");
     let mut out = table(&["from", "to"]);
     for w in &usable.windows {
         out.add_row(vec![when(w.window.start(), zone), when(w.window.end(), zone)]);
     }
-    println!("{out}");
+    say!("{out}");
 }
 
 fn outlet_json(site: &Site, name: &str, lawful: &Lawful, usable: &Usable) -> serde_json::Value {

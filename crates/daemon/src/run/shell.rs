@@ -290,7 +290,7 @@ impl Shell {
         self.parts.host.finish(Duration::from_secs(5));
         // What is still to be acknowledged is committed by the close itself.
         self.parts.journal.close()?;
-        println!("stopped: assets sent to rest, journal closed");
+        say!("stopped: assets sent to rest, journal closed");
         Ok(Exit::Done)
     }
 

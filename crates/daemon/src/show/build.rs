@@ -22,7 +22,7 @@ pub fn now_view(state: &State, stamp: &Stamp) -> NowView {
         term: stamp.term.0,
         mode: state.mode().words().to_owned(),
         armed,
-        not_armed_because: reasons.to_vec(),
+        not_armed_because: reasons,
         safe_latch: state.safe_latch().map(str::to_owned),
         clock_trusted: stamp.trust == engine::ClockTrust::Trusted,
         simulated: site.all_simulated(),
@@ -48,7 +48,7 @@ fn wrong(state: &State, stamp: &Stamp) -> Vec<String> {
     let site = state.site();
     let mut wrong: Vec<String> = Vec::new();
     wrong.extend(state.safe_latch().map(|l| format!("the safe latch is set: {l}")));
-    wrong.extend(state.armed().1.iter().cloned());
+    wrong.extend(state.armed().1);
     for asset in &site.assets {
         wrong.extend(state.asset_state(asset.id).map(|s| format!("{}: {s}", asset.name)));
     }
