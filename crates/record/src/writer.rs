@@ -1,0 +1,118 @@
+//! Putting fields into a body: little-endian, fixed order, names as text.
+
+use interlock::Action;
+use model::{AdapterId, AssetId, ClauseId, RestAction, SignalId, Site};
+use units::{Mono, Percent, Utc, Window};
+
+use engine::{ClockTrust, Mode};
+
+/// Writes one body. Names come from the site, so that the row reads without it.
+pub(crate) struct Writer<'a> {
+    pub(crate) bytes: Vec<u8>,
+    pub(crate) site: &'a Site,
+}
+
+impl<'a> Writer<'a> {
+    pub(crate) fn new(site: &'a Site) -> Self {
+        Self { bytes: Vec::new(), site }
+    }
+    pub(crate) fn u8(&mut self, v: u8) {
+        self.bytes.push(v);
+    }
+    pub(crate) fn u64(&mut self, v: u64) {
+        self.bytes.extend(v.to_le_bytes());
+    }
+    pub(crate) fn i64(&mut self, v: i64) {
+        self.bytes.extend(v.to_le_bytes());
+    }
+    /// The bits, so that every value comes back as it was.
+    pub(crate) fn f64(&mut self, v: f64) {
+        self.u64(v.to_bits());
+    }
+    pub(crate) fn flag(&mut self, v: bool) {
+        self.u8(u8::from(v));
+    }
+    /// A length or a count.
+    pub(crate) fn count(&mut self, n: usize) {
+        let n = u32::try_from(n).expect("no list or text has four thousand million items");
+        self.bytes.extend(n.to_le_bytes());
+    }
+    pub(crate) fn text(&mut self, v: &str) {
+        self.count(v.len());
+        self.bytes.extend(v.as_bytes());
+    }
+    pub(crate) fn option<T>(&mut self, v: Option<T>, put: impl FnOnce(&mut Self, T)) {
+        self.flag(v.is_some());
+        if let Some(v) = v {
+            put(self, v);
+        }
+    }
+    pub(crate) fn list<T>(&mut self, items: &[T], mut put: impl FnMut(&mut Self, &T)) {
+        self.count(items.len());
+        for item in items {
+            put(self, item);
+        }
+    }
+    pub(crate) fn utc(&mut self, t: Utc) {
+        self.i64(t.as_micros());
+    }
+    pub(crate) fn mono(&mut self, t: Mono) {
+        self.u64(t.as_nanos());
+    }
+    pub(crate) fn window(&mut self, w: &Window) {
+        self.utc(w.start());
+        self.utc(w.end());
+    }
+    pub(crate) fn percent(&mut self, p: Percent) {
+        self.f64(p.get());
+    }
+    pub(crate) fn asset(&mut self, id: AssetId) {
+        let site = self.site;
+        self.text(&site.asset(id).name);
+    }
+    pub(crate) fn signal(&mut self, id: SignalId) {
+        let site = self.site;
+        self.text(&site.signal(id).name);
+    }
+    pub(crate) fn adapter(&mut self, id: AdapterId) {
+        let site = self.site;
+        self.text(&site.adapters[id.index()].name);
+    }
+    pub(crate) fn clause(&mut self, id: ClauseId) {
+        let site = self.site;
+        self.text(&site.licence.clause(id).number);
+    }
+    pub(crate) fn action(&mut self, action: Action) {
+        match action {
+            Action::Open(p) => {
+                self.u8(1);
+                self.percent(p);
+            }
+            Action::Shut => self.u8(2),
+            Action::Run => self.u8(3),
+            Action::Stop => self.u8(4),
+        }
+    }
+    pub(crate) fn rest_action(&mut self, action: RestAction) {
+        self.u8(match action {
+            RestAction::Close => 1,
+            RestAction::Open => 2,
+            RestAction::Stop => 3,
+            RestAction::Hold => 4,
+            RestAction::HandToLocal => 5,
+        });
+    }
+    pub(crate) fn mode(&mut self, mode: Mode) {
+        self.u8(match mode {
+            Mode::Observe => 1,
+            Mode::Advise => 2,
+            Mode::Automatic => 3,
+        });
+    }
+    pub(crate) fn trust(&mut self, trust: ClockTrust) {
+        self.u8(match trust {
+            ClockTrust::Trusted => 1,
+            ClockTrust::Distrusted => 2,
+        });
+    }
+}
