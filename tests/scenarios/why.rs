@@ -120,7 +120,7 @@ fn scenes() -> Vec<Scene> {
     let mut world = World::new(setup(tarrow(), at("2027-05-01T00:00:00Z"), 3));
     let mut list = Vec::new();
     let mut next = at("2027-05-01T01:00:00Z");
-    while world.next().unwrap() {
+    while world.advance().unwrap() {
         if world.now() >= next {
             next = world.now() + Span::minutes(40);
             let (state, stamp) = world.state();

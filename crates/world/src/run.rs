@@ -105,7 +105,7 @@ impl World {
 
     /// Runs to the end of the span. The error is the plant's: a configuration it cannot follow.
     pub fn run(mut self) -> Result<Run, PlantError> {
-        while self.next()? {}
+        while self.advance()? {}
         self.run.record = self.setup.plant.take_record();
         Ok(self.run)
     }
@@ -120,7 +120,7 @@ impl World {
     }
 
     /// Takes the next instant; `false` when the span is over.
-    pub fn next(&mut self) -> Result<bool, PlantError> {
+    pub fn advance(&mut self) -> Result<bool, PlantError> {
         let t = self.next_instant();
         if t >= self.setup.span.end() {
             return Ok(false);
