@@ -111,7 +111,7 @@ impl Host {
     /// Sends a command whose intent is durable. It is refused, with an outcome, if its permit has
     /// expired by the time it would leave.
     pub fn drive(&self, adapter: u16, point: &str, committed: Committed) -> Result<(), HostError> {
-        self.send(adapter, Work::Drive { point: point.to_owned(), committed })
+        self.send(adapter, Work::Drive { point: point.to_owned(), committed: Box::new(committed) })
     }
     pub fn renew(&self, adapter: u16, renewal: Renewal) -> Result<(), HostError> {
         self.send(adapter, Work::Renew(renewal))

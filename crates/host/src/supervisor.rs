@@ -27,7 +27,7 @@ use crate::pending::{Call, Pending};
 pub(crate) enum Work {
     Drive {
         point: String,
-        committed: Committed,
+        committed: Box<Committed>,
     },
     Renew(Renewal),
     Rest {
@@ -197,7 +197,7 @@ impl Supervisor {
 
     fn take(&mut self, work: Work) {
         match work {
-            Work::Drive { point, committed } => self.drive(point, committed),
+            Work::Drive { point, committed } => self.drive(point, &committed),
             Work::Renew(renewal) => self.renew(&renewal),
             Work::Rest { points, cause, words } => self.rest(points, cause, words),
             Work::Said { life, line } if life == self.life && self.running.is_some() => {
@@ -211,7 +211,7 @@ impl Supervisor {
         }
     }
 
-    fn drive(&mut self, point: String, committed: Committed) {
+    fn drive(&mut self, point: String, committed: &Committed) {
         let permit = committed.permit();
         let command = permit.command();
         if !self.introduced {

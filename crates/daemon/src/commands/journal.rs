@@ -57,7 +57,7 @@ fn verify(args: &SiteArgs) -> Result<Exit> {
     let dir = args.state_dir();
     let mut last = 0;
     let mut progress = |done: u64, total: u64| {
-        let percent = if total == 0 { 100 } else { done * 100 / total };
+        let percent = (done * 100).checked_div(total).unwrap_or(100);
         if percent >= last + 10 {
             last = percent;
             eprintln!("{percent} % ({done} of {total} rows)");

@@ -4,7 +4,7 @@ use std::sync::Arc;
 
 use anyhow::{Result, bail};
 use clap::Args;
-use engine::{Carried, ClockTrust, Config, Effects, Event, PermitLife, Stamp, State, step};
+use engine::{ClockTrust, Config, Effects, Event, PermitLife, Stamp, State, step};
 use model::{Plan, Reading, Site, Term};
 use units::{Mono, Utc};
 
@@ -75,7 +75,7 @@ fn offline(site: &Arc<Site>, at: Utc, level_m: f64) -> Result<Plan> {
         let stamp = Stamp { seq, term, utc: at, boot: Mono::from_nanos(seq), trust };
         step(state, &stamp, event, fx);
     };
-    feed(Event::Started(Box::new(Carried::default())), &mut fx, &mut state);
+    feed(Event::Started(Box::default()), &mut fx, &mut state);
     let mut jobs = std::mem::take(&mut fx.jobs);
     for adapter in &site.adapters {
         feed(Event::AdapterUp(adapter.id), &mut fx, &mut state);

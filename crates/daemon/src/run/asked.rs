@@ -90,7 +90,7 @@ fn why(shell: &Shell, asset: &str, at: Option<&str>, reply: SyncSender<Response>
 /// The last decision on the asset at or before `at`, as it stands in the record.
 fn past_why(asset: &str, at: Utc, rows: &[Row]) -> Response {
     let decided = |r: &&Row| r.kind == record::kind::DECISION && r.subject == asset && r.utc <= at;
-    match rows.iter().filter(decided).next_back() {
+    match rows.iter().rfind(decided) {
         Some(row) => {
             let view = WhyView::recorded(asset, row.utc, row.seq, &record::describe(row));
             serde_json::to_value(view)
