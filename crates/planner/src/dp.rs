@@ -62,11 +62,25 @@ pub(crate) struct Solved {
     layers: Vec<Vec<f64>>,
 }
 
+#[derive(Clone, Copy, PartialEq, Debug)]
+struct Move {
+    /// Whole steps of the volume used, and the rest of one.
+    steps: usize,
+    rest: f64,
+    /// Not finite where the action is not allowed.
+    cost: f64,
+}
+
+/// What an open gate lets out, m3, and whether that brings the storage down to its floor.
+#[derive(Clone, Copy, PartialEq, Debug, Default)]
+pub(crate) struct Passed {
+    pub m3: f64,
+    pub to_floor: bool,
+}
+
 /// One action in one slot from each volume that a line can have: what is released and its cost.
 struct Moves {
-    /// Whole steps of the volume used, the rest of one, and the cost; which is not finite where the
-    /// action is not allowed.
-    each: Vec<(usize, f64, f64)>,
+    each: Vec<Move>,
     /// How many slots it takes.
     slots: usize,
 }
@@ -161,8 +175,9 @@ impl Problem<'_> {
         (kept, stored + spilled * self.prices.spill_m3)
     }
 
-    /// What a slot releases from `volume` with the gate open and `pumps` running, m3; `None` where
-    /// gravity alone has no head that lasts. `open_s`: how long the gate has been opening.
+    /// What a slot releases from `volume` with the gate open and `pumps` running; `None` where
+    /// gravity alone has no head that lasts. `open_s`: how long the gate has been opening. A storage
+    /// that is down to its lowest working level passes what flows in, at a price.
     pub(crate) fn passes(
         &self,
         s: &SlotData,
@@ -170,17 +185,19 @@ impl Problem<'_> {
         pumps: usize,
         volume: f64,
         open_s: Option<f64>,
-    ) -> Option<f64> {
+    ) -> Option<Passed> {
         if pumps == 0 && !self.head_lasts(volume, s.outer_most_m) {
             return None;
         }
         let dt = s.slot.length().as_seconds();
         let ramp = open_s.map_or(f64::INFINITY, |e| self.ramp_m3_s2 * (e + dt / 2.0) * dt);
-        let able = s.most_m3.min(ramp).min((volume + s.inflow_m3 - self.volume_low).max(0.0));
+        let above = (volume + s.inflow_m3 - self.volume_low).max(0.0);
+        let able = s.most_m3.min(ramp).min(above);
         let pumped = self.pumped_m3_s(pumps, tide);
         let flow = |v: f64| self.gravity_m3_s(v, s.outer_middle_m).max(pumped) * dt;
         let first = flow(volume).min(able);
-        Some(flow(volume + (s.inflow_m3 - first) / 2.0).min(able))
+        let m3 = flow(volume + (s.inflow_m3 - first) / 2.0).min(able);
+        Some(Passed { m3, to_floor: m3 >= above })
     }
 
     /// Whether `to` pumps may run in this slot after `from`: changes keep their block, and a pump
@@ -211,32 +228,47 @@ impl Problem<'_> {
     fn moves(&self, period: &Period, l: &Lines, n: usize, mode: Mode, inflow: f64) -> Moves {
         let s = &period.slots[n];
         self.table(l, inflow, 1, |volume| {
-            let (released, energy) = match mode {
-                Mode::Shut => (0.0, 0.0),
+            let (passed, energy) = match mode {
+                Mode::Shut => (Passed::default(), 0.0),
                 Mode::Open(p) => {
                     (self.passes(s, period.tide, p, volume, None)?, self.energy(s, period.tide, p))
                 }
             };
             let hours = s.slot.length().as_hours();
-            let (_, cost) = self.kept(volume, s.inflow_m3 - released, hours);
-            Some((released, cost + energy))
+            let (_, cost) = self.kept(volume, s.inflow_m3 - passed.m3, hours);
+            Some((passed.m3, cost + energy + self.trickle(&passed)))
         })
     }
 
     /// Opening at slot `n` with `pumps`, until the ramp has reached the flow aimed at.
     fn opening(&self, period: &Period, l: &Lines, n: usize, pumps: usize, inflow: f64) -> Moves {
         let slots = self.ramp_slots(period, n);
-        self.table(l, inflow, slots, |volume| {
-            let (mut v, mut released, mut cost, mut open_s) = (volume, 0.0, 0.0, 0.0);
-            for s in &period.slots[n..n + slots] {
-                let out = self.passes(s, period.tide, pumps, v, Some(open_s))?;
-                let (kept, more) = self.kept(v, s.inflow_m3 - out, s.slot.length().as_hours());
-                cost += more + self.energy(s, period.tide, pumps);
-                open_s += s.slot.length().as_seconds();
-                (v, released) = (kept, released + out);
-            }
-            Some((released, cost))
+        self.table(l, inflow, slots, |v| {
+            self.opened(&period.slots[n..n + slots], period.tide, pumps, v)
         })
+    }
+
+    /// Opening over these slots: all that passes, and its cost without the stroke and the starts.
+    pub(crate) fn opened(
+        &self,
+        slots: &[SlotData],
+        tide: i64,
+        pumps: usize,
+        volume: f64,
+    ) -> Option<(f64, f64)> {
+        let (mut v, mut all_m3, mut cost, mut open_s) = (volume, 0.0, 0.0, 0.0);
+        for s in slots {
+            let passed = self.passes(s, tide, pumps, v, Some(open_s))?;
+            let (kept, more) = self.kept(v, s.inflow_m3 - passed.m3, s.slot.length().as_hours());
+            cost += more + self.energy(s, tide, pumps) + self.trickle(&passed);
+            open_s += s.slot.length().as_seconds();
+            (v, all_m3) = (kept, all_m3 + passed.m3);
+        }
+        Some((all_m3, cost))
+    }
+
+    pub(crate) fn trickle(&self, passed: &Passed) -> f64 {
+        if passed.to_floor { self.prices.trickle } else { 0.0 }
     }
 
     /// How many slots from `n` on the ramp takes, within its window.
@@ -258,11 +290,13 @@ impl Problem<'_> {
     ) -> Moves {
         let each = (0..l.count + l.nodes).map(|m| {
             let raw = l.base + (m as f64 - l.nodes as f64) * l.step + inflow;
-            let found = of(raw.min(self.volume_spill));
-            found.map_or((0, 0.0, f64::INFINITY), |(x, cost)| {
-                let steps = x / l.step;
-                (steps as usize, steps.fract(), cost)
-            })
+            match of(raw.min(self.volume_spill)) {
+                None => Move { steps: 0, rest: 0.0, cost: f64::INFINITY },
+                Some((m3, cost)) => {
+                    let steps = m3 / l.step;
+                    Move { steps: steps as usize, rest: steps.fract(), cost }
+                }
+            }
         });
         Moves { each: each.collect(), slots }
     }
@@ -358,13 +392,10 @@ impl Solved {
         let row = &self.ahead(moves.slots)[self.row(mode, i)];
         let last = self.lines.nodes;
         let of_line = moves.each[i..=i + last].iter().rev();
-        for (j, (cost, (steps, rest, price))) in costs.iter_mut().zip(of_line).enumerate() {
-            let at = j + steps;
-            *cost = if at >= last {
-                row[last] + price
-            } else {
-                row[at] + (row[at + 1] - row[at]) * rest + price
-            };
+        for (j, (cost, m)) in costs.iter_mut().zip(of_line).enumerate() {
+            let at = j + m.steps;
+            *cost = m.cost
+                + if at >= last { row[last] } else { row[at] + (row[at + 1] - row[at]) * m.rest };
         }
     }
     fn only_shut(&self, shut: &Moves) -> Vec<f64> {

@@ -232,23 +232,30 @@ impl Walk<'_> {
         if flow > self.problem.ramp_m3_s2 * (left_s + LATE_S) {
             return self.shut();
         }
-        let ramp = self.problem.ramp_m3_s2;
+        let (ramp, able) = (self.problem.ramp_m3_s2, self.able_m3_s(period, s));
         match self.mode {
             Mode::Open(pumps) if self.throttle.closing.is_some() || self.must_close(s, pumps) => {
-                self.throttle.close(ramp);
+                self.throttle.close(ramp, able);
                 let carried = self.problem.head_lasts(self.volume, s.outer_most_m)
                     && self.problem.may_change(s, period.tide, pumps, 0, self.volume);
                 self.mode = Mode::Open(if carried { 0 } else { pumps });
             }
             _ => match self.best(period, i, on, left) {
                 Mode::Shut if self.mode == Mode::Shut => {}
-                Mode::Shut => self.throttle.close(ramp),
+                Mode::Shut => self.throttle.close(ramp, able),
                 open => self.open(open),
             },
         }
         if self.throttle.is_shut() {
             self.shut();
         }
+    }
+
+    /// What head and running pumps give at the slot's start.
+    fn able_m3_s(&self, period: &Period, s: &SlotData) -> f64 {
+        let pumps = if let Mode::Open(pumps) = self.mode { pumps } else { 0 };
+        let gravity = self.problem.gravity_m3_s(self.volume, self.problem.outer_m(s.slot.start()));
+        gravity.max(self.problem.pumped_m3_s(pumps, period.tide))
     }
 
     /// Gravity alone, and the head may be gone by the time that a closing begun after this slot has
@@ -312,25 +319,27 @@ impl Walk<'_> {
     ) -> Option<f64> {
         let p = self.problem;
         let s = &period.slots[i];
-        let (from, open_s) = match self.mode {
-            Mode::Open(from) => (from, None),
-            Mode::Shut => (0, Some(0.0)),
-        };
+        let from = if let Mode::Open(from) = self.mode { from } else { 0 };
         if !p.may_change(s, period.tide, from, to, self.volume)
             || (to > from && !self.runs_long(period, s, to, left))
         {
             return None;
         }
-        // An opening is followed along its ramp, as the backward pass did.
-        let slots = if open_s.is_some() { p.ramp_slots(period, i) } else { 1 };
-        let (mut v, mut out, mut cost, mut open_s) = (self.volume, 0.0, 0.0, open_s);
-        for s in &period.slots[i..i + slots] {
-            let x = p.passes(s, period.tide, to, v, open_s)?;
-            let (kept, more) = p.kept(v, s.inflow_m3 - x, s.slot.length().as_hours());
-            cost += more + p.energy(s, period.tide, to);
-            open_s = open_s.map(|e| e + s.slot.length().as_seconds());
-            (v, out) = (kept, out + x);
-        }
+        let (slots, m3, cost) = match self.mode {
+            // An opening is followed along its ramp, as the backward pass did.
+            Mode::Shut => {
+                let slots = p.ramp_slots(period, i);
+                let of_ramp = &period.slots[i..i + slots];
+                let (m3, cost) = p.opened(of_ramp, period.tide, to, self.volume)?;
+                (slots, m3, cost)
+            }
+            Mode::Open(_) => {
+                let passed = p.passes(s, period.tide, to, self.volume, None)?;
+                let gain = s.inflow_m3 - passed.m3;
+                let kept = p.kept(self.volume, gain, s.slot.length().as_hours()).1;
+                (1, passed.m3, kept + p.energy(s, period.tide, to) + p.trickle(&passed))
+            }
+        };
         let prices = &p.prices;
         let again = period.begun || self.used > 0.0;
         let stroke = match self.mode {
@@ -339,7 +348,7 @@ impl Walk<'_> {
             Mode::Shut => prices.opening,
         };
         let starts = prices.pump_start * to.saturating_sub(from) as f64;
-        Some(cost + stroke + starts + solved.at(i + slots, Mode::Open(to), used + out))
+        Some(cost + stroke + starts + solved.at(i + slots, Mode::Open(to), used + m3))
     }
 
     /// Whether what is left lets a pump that starts now run for its least time.

@@ -20,6 +20,9 @@ pub(crate) struct Prices {
     /// Each further opening on the same tide.
     pub reopening: f64,
     pub pump_start: f64,
+    /// A slot in which an open gate only passes what flows in, the storage being down to its floor:
+    /// more than that water is worth, unless it keeps the storage off its alarm or its weir.
+    pub trickle: f64,
 }
 
 /// With no pump, or free energy, a price is still needed: this much a m3.
@@ -41,6 +44,7 @@ impl Prices {
             opening,
             reopening: 20.0 * opening,
             pump_start: opening,
+            trickle: 4.0 * opening,
         }
     }
     /// Keeping `volume` for `hours`.

@@ -37,8 +37,9 @@ pub(crate) struct Room {
 impl Throttle {
     pub(crate) const SHUT: Self = Self { flow_m3_s: 0.0, closing: None };
 
-    /// Begins a ramp down: q2 / 2r is what still passes.
-    pub(crate) fn close(&mut self, ramp_m3_s2: f64) {
+    /// Begins a ramp down from the flow that there is, `able_m3_s` at the most: q2 / 2r still passes.
+    pub(crate) fn close(&mut self, ramp_m3_s2: f64, able_m3_s: f64) {
+        self.flow_m3_s = self.flow_m3_s.min(able_m3_s);
         let tail_m3 = self.flow_m3_s * self.flow_m3_s / (2.0 * ramp_m3_s2);
         self.closing.get_or_insert(tail_m3);
     }
@@ -71,30 +72,39 @@ impl Throttle {
             let bound = if room.pumped_m3_s > gravity { Bound::Pump } else { Bound::Head };
             (gravity.max(room.pumped_m3_s), bound)
         };
-        let start = self.flow_m3_s.min(able(room.volume, piece.start()).0);
+        // A flow that was carried over the aim comes down to it at once.
+        let start = self.flow_m3_s.min(w.flow_aim_m3_s).min(able(room.volume, piece.start()).0);
         let later = room.volume + room.inflow_m3 - start * dt;
         let mut end = able(later, piece.end());
+        let rising = if self.closing.is_some() { 0.0 } else { ramp * dt };
         let left_s = (w.flow.end() - piece.end()).as_seconds().max(0.0);
         for limit in [
             (w.flow_aim_m3_s, Bound::Aim),
-            (start + ramp * dt, Bound::Ramp),
+            (start + rising, Bound::Ramp),
             (ramp * left_s, Bound::Ramp),
         ] {
             end = if limit.0 < end.0 { limit } else { end };
         }
         // Down the ramp so that it ends when the volume does: q2 / 2r is left at every instant.
-        let above = (room.volume + room.inflow_m3 - p.volume_low).max(0.0);
-        let cap = room.left_m3.min(above);
-        let left = self.closing.map_or(cap, |c| c.min(cap));
+        let left = self.closing.map_or(room.left_m3, |c| c.min(room.left_m3));
         let tail = tail_m3_s(start, left, ramp, dt);
         let ends = tail < end.0;
         if ends {
-            let by = room.left_by.filter(|_| room.left_m3 <= above && self.closing.is_none());
+            let by = room.left_by.filter(|_| self.closing.is_none());
             end = (tail, by.map_or(end.1, Bound::Volume));
+        }
+        // And so that the storage is down to its floor when the flow is down to the inflow, which it
+        // then keeps to until it is told to shut.
+        let inflow = room.inflow_m3 / dt;
+        let above = (room.volume - p.volume_low).max(0.0);
+        let to_floor = inflow + tail_m3_s((start - inflow).max(0.0), above, ramp, dt);
+        if to_floor < end.0 {
+            end = (to_floor, Bound::Head);
         }
         self.flow_m3_s = end.0;
         let even = (start + end.0) / 2.0 * dt;
         let volume = if ends && end.0 <= 0.0 { left } else { even.min(left) };
+        let volume = volume.min(above + room.inflow_m3);
         if ends || self.closing.is_some() {
             self.closing = Some(left - volume);
         }

@@ -5,6 +5,9 @@ use proptest::prelude::*;
 use super::*;
 use crate::{Bounds, PermitLife, State};
 
+/// An interlock, and a way to make a calm scene wrong that it must find.
+type Case = (Id, fn(&mut Scene));
+
 const NOW: Mono = Mono::from_nanos(1_000_000_000_000);
 
 fn gate() -> Rules {
@@ -89,7 +92,7 @@ fn a_permit_says_what_where_and_until_when() {
 
 #[test]
 fn each_wrong_thing_is_found_by_its_own_interlock() {
-    let cases: [(Id, fn(&mut Scene)); 10] = [
+    let cases: [Case; 10] = [
         (Id::LockedOut, |s| s.state.locked_out = true),
         (Id::Local, |s| s.selector = Some(raw(1.0))),
         (Id::Local, |s| s.selector = Some(None)),
@@ -165,7 +168,7 @@ fn a_way_may_stand_open_against_the_head_only_for_pumps() {
 fn a_pump_needs_an_open_way_water_rest_and_starts_to_spare() {
     let run = wish(Action::Run);
     assert_eq!(found(&pump(), &scene(), &run), []);
-    let cases: [(Id, fn(&mut Scene)); 5] = [
+    let cases: [Case; 5] = [
         (Id::NoOpenWay, |s| s.way = raw(9.0)),
         (Id::SignalBad, |s| s.way = None),
         (Id::DryRun, |s| s.inner = [Some(raw(3.7)), Some(raw(3.7))]),

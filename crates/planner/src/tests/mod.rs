@@ -2,3 +2,6 @@
 
 mod figures;
 mod fixture;
+mod greedy;
+mod laws;
+mod reader;
