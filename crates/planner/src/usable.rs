@@ -1,12 +1,15 @@
 //! Usable windows: when the water outside lets anything out at all, whatever the licence says.
 
-use model::{Forecast, Site, Usable, UsableEdge, UsableWindow};
+use model::{AssetId, Forecast, Site, Usable, UsableEdge, UsableWindow};
 use units::Utc;
 
 /// When a storage at its high-alarm level has a head over the water outside; with pumps, which lift
-/// over any tide that the site's range of levels holds, always.
+/// over any tide that the site's range of levels holds, always. An outlet that the site does not
+/// have is never usable.
 pub fn usable(site: &Site, outlet: usize, forecast: &Forecast) -> Usable {
-    let outlet = &site.outlets[outlet];
+    let Some(outlet) = site.outlets.get(outlet) else {
+        return Usable { asset: AssetId(u16::MAX), windows: Vec::new() };
+    };
     let full_m = site.storage(outlet.storage).level_high_alarm.get();
     let level = &forecast.place(outlet.place).level;
     let (port_m, excess) = (outlet.pipe.port_centre.get(), outlet.pipe.density_excess);
