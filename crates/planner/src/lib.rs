@@ -10,9 +10,9 @@
 //! What it minds, in this order: water spilled, then water above the high alarm, then energy,
 //! strokes and starts, with a small price on stored water so that it leaves early and by gravity.
 //!
-//! How it goes: [backwards](dp) over the slots for the least cost to go from every state, then
-//! [forwards](forward) from now, minute by minute, with ramps and caps exact; longer caps are
-//! [repaired](repair) to feasible.
+//! How it goes: backwards over the slots for the least cost to go from every state (`dp`), then
+//! forwards from now, minute by minute, with ramps and caps exact (`forward`); longer caps are
+//! repaired to feasible (`repair`).
 //!
 //! Not here: tariffs by the hour, planning against several inflows at once, storages that share a
 //! resource, levels that must be held, and how long a pump has run or rested before the plan begins
@@ -27,6 +27,7 @@
 //! # let _ = usable;
 //! ```
 
+mod actions;
 mod assemble;
 mod audit;
 mod digest;

@@ -102,9 +102,10 @@ impl<'a> Problem<'a> {
     pub(crate) fn gravity_m3_s(&self, volume: f64, outer_m: f64) -> f64 {
         self.outfall.flow_m3_s(self.storage.level_m(volume), outer_m, 1.0)
     }
-    /// Whether the head lasts: against `outer_most_m`, the highest water of the closing lead.
-    pub(crate) fn head_lasts(&self, volume: f64, outer_most_m: f64) -> bool {
-        self.outfall.net_head_m(self.storage.level_m(volume), outer_most_m) > 0.0
+    /// The storage volume that just balances the water outside; over it there is a head.
+    pub(crate) fn volume_head(&self, outer_m: f64) -> f64 {
+        // The net head is the inner level less something that only the outside knows.
+        self.storage.volume_m3(-self.outfall.net_head_m(0.0, outer_m))
     }
     /// Flow of `n` pumps on this tide: which ones come first goes round with the tides.
     pub(crate) fn pumped_m3_s(&self, n: usize, tide: i64) -> f64 {

@@ -42,20 +42,48 @@ impl Period {
     }
 }
 
-/// One slot and what does not depend on the storage.
-#[derive(Clone, Copy, PartialEq, Debug)]
+/// One slot and what is known of it whatever is decided.
+#[derive(Clone, PartialEq, Debug)]
 pub(crate) struct SlotData {
     pub slot: Window,
     /// The release window that it lies in; `None` between two windows of one tide.
     pub window: Option<usize>,
     pub inflow_m3: f64,
-    pub outer_middle_m: f64,
-    /// The highest water outside from the slot's start to its end and the closing lead after it.
-    pub outer_most_m: f64,
+    /// What gravity passes in the slot's middle, m3/s, by storage volume: see [`Gravity`].
+    pub gravity: Gravity,
+    /// Over this storage volume the head lasts from the slot's start to its end and the closing
+    /// lead after it.
+    pub volume_head: f64,
     /// The most that the flow aim and the ramp down to the window's end pass in the slot.
     pub most_m3: f64,
     /// Whether a pump may start or stop at the slot's start.
     pub pumps_may_change: bool,
+}
+
+/// The head-flow relation of one instant on even steps of the storage's volume, for decisions alone:
+/// what is then carried out is worked out afresh. A step is 2 cm of the demonstration site's lagoon.
+#[derive(Clone, PartialEq, Debug)]
+pub(crate) struct Gravity {
+    low: f64,
+    step: f64,
+    flows_m3_s: Vec<f64>,
+}
+
+impl Gravity {
+    const STEPS: usize = 128;
+
+    fn of(problem: &Problem, outer_m: f64) -> Self {
+        let low = problem.volume_low;
+        let step = (problem.volume_spill - low) / Self::STEPS as f64;
+        let flow = |i: usize| problem.gravity_m3_s(low + i as f64 * step, outer_m);
+        Self { low, step, flows_m3_s: (0..=Self::STEPS).map(flow).collect() }
+    }
+    pub(crate) fn m3_s(&self, volume: f64) -> f64 {
+        let at = ((volume - self.low) / self.step).clamp(0.0, Self::STEPS as f64);
+        let i = (at as usize).min(Self::STEPS - 1);
+        let (a, b) = (self.flows_m3_s[i], self.flows_m3_s[i + 1]);
+        a + (b - a) * (at - i as f64)
+    }
 }
 
 /// A release shorter than this is not worth a stroke.
@@ -159,8 +187,8 @@ fn cut(problem: &Problem, window: Option<usize>, from: Utc, until: Utc, slots: &
             slot,
             window,
             inflow_m3: problem.inflow_m3(t, next),
-            outer_middle_m: problem.outer_m(t + slot.length().scaled(0.5)),
-            outer_most_m: problem.outer_most_m(t, next + lead),
+            gravity: Gravity::of(problem, problem.outer_m(t + slot.length().scaled(0.5))),
+            volume_head: problem.volume_head(problem.outer_most_m(t, next + lead)),
             most_m3: window
                 .map_or(0.0, |n| most_m3(&problem.windows[n], &slot, problem.ramp_m3_s2)),
             pumps_may_change,
