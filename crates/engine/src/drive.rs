@@ -7,7 +7,7 @@ use units::{Mono, Percent, Span};
 use crate::decide::{self, Decision, Goal};
 use crate::ramp;
 use crate::state::{Command, Phase, State};
-use crate::{Effects, Entry, Notice, Order, RestOrder, Severity, Stamp};
+use crate::{Effects, Entry, Notice, Order, Outcome, RestOrder, Severity, Stamp};
 
 /// A confirmed position that strays further than this has been moved by something else.
 const DRIFT_PERCENT: f64 = 6.0;
@@ -37,12 +37,6 @@ pub(crate) fn watch(state: &mut State, stamp: &Stamp, asset: AssetId, effects: &
             if !command.action.is_active() {
                 slot.last_stop = Some(stamp.boot);
                 slot.assisted_since = None;
-            }
-        }
-        // Unknown to us: it is read back when its adapter is there again, and rests by itself.
-        Travel::Late if command.phase == Phase::Unknown && position.is_none() => {
-            if stamp.boot > command.lease_end + stroke.scaled(factor) {
-                forget(state, asset);
             }
         }
         Travel::Late => discrepancy(state, stamp, asset, command, position, effects),
@@ -77,6 +71,24 @@ fn forget(state: &mut State, asset: AssetId) {
     slot.command = None;
     slot.flow_target = 0.0;
     slot.assisted_since = None;
+}
+
+/// Its adapter is gone: nothing can be told and nothing is seen. Its lease runs out and it rests by
+/// itself; if the adapter is back before that, what it does is adopted.
+pub(crate) fn lose_sight(state: &mut State, asset: AssetId, why: &str, effects: &mut Effects) {
+    let Some(command) = state.assets[asset.index()].command else { return };
+    let spec = state.site.asset(asset);
+    let stroke = match &spec.kind {
+        AssetKind::Gate(g) => g.stroke,
+        AssetKind::Pump(p) => p.start_timeout,
+    };
+    let drained = state.site.outlet_of(asset).map_or(Span::ZERO, |o| o.drain_down);
+    let outcome = Outcome::Unknown(why.to_owned());
+    effects.records.push(Entry::Outcome { asset, command: command.id, outcome });
+    forget(state, asset);
+    let slot = &mut state.assets[asset.index()];
+    slot.carried = Some(command.action).filter(|a| a.is_active());
+    slot.unseen_until = Some(command.lease_end + stroke + drained);
 }
 
 /// Feedback does not fit: the asset is tripped, sent to rest, and waits for a person.

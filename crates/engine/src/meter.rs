@@ -36,8 +36,11 @@ fn flow_now(state: &State, outlet: &Outlet, stamp: &Stamp) -> (f64, bool) {
     match state.metered_flow(outlet, stamp.utc) {
         Some(q) => (q, false),
         None => {
-            let open = state.active(outlet.gate)
-                || state.position(outlet.gate, stamp.boot).is_some_and(|p| p > 2.5);
+            let unseen = state.assets[outlet.gate.index()].unseen_until;
+            let open = match state.position(outlet.gate, stamp.boot) {
+                Some(percent) => percent > 2.5 || state.active(outlet.gate),
+                None => state.active(outlet.gate) || unseen.is_some_and(|t| stamp.boot < t),
+            };
             let cap = licence::flow_cap(&state.site, outlet.gate).map_or(0.0, |c| c.max.get());
             (if open { cap } else { 0.0 }, true)
         }

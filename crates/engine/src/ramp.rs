@@ -9,7 +9,7 @@
 //! reached no faster than the ramp `r`. The opening for a flow is the plan's model of it, corrected
 //! by a trim that the meter teaches.
 
-use model::{AssetId, AssetKind, EdgeAnchor, Setpoint};
+use model::{AssetId, AssetKind, ClauseId, ClauseKind, EdgeAnchor, Lawful, Setpoint};
 use units::{Mono, Percent, Span};
 
 use crate::Stamp;
@@ -22,6 +22,9 @@ pub(crate) const RAMP_STEP: Span = Span::minutes(1);
 const FLOW_SHUT_M3_S: f64 = 0.03;
 /// A metered flow this near to the one aimed at is left alone: each correction is a stroke.
 const NEAR_ENOUGH: f64 = 0.04;
+/// Share of a volume cap that is aimed at: the meter errs by a per cent or so, and the cap is on the
+/// water, not on the reading.
+pub(crate) const VOLUME_AIM: f64 = 0.985;
 /// The trim stays within a factor that no honest model misses by.
 const TRIM_LEAST: f64 = 0.6;
 const TRIM_MOST: f64 = 1.6;
@@ -42,9 +45,25 @@ fn limits(state: &State, stamp: &Stamp, asset: AssetId, decision: &Decision) -> 
         flow_m3_s = flow_m3_s.min(ramp_m3_s2 * left_s.max(0.0));
     }
     if let Some(volume) = guarded.and_then(|g| g.volume_left) {
-        flow_m3_s = flow_m3_s.min((2.0 * ramp_m3_s2 * volume.max.get().max(0.0)).sqrt());
+        let left_m3 =
+            volume.max.get() - (1.0 - VOLUME_AIM) * whole_cap_m3(state, stamp, volume.clause);
+        flow_m3_s = flow_m3_s.min((2.0 * ramp_m3_s2 * left_m3.max(0.0)).sqrt());
     }
     Limits { ramp_m3_s2, flow_m3_s }
+}
+
+/// The cap whose rest is counted down: the tide's own, or the clause's.
+fn whole_cap_m3(state: &State, stamp: &Stamp, clause: ClauseId) -> f64 {
+    match &state.site.licence.clause(clause).kind {
+        ClauseKind::RollingVolume { volume_max, .. } | ClauseKind::MonthVolume { volume_max } => {
+            volume_max.get()
+        }
+        _ => {
+            let here = |l: &Lawful| l.holding(stamp.utc).and_then(|w| w.volume_max);
+            let caps = state.lawful.iter().flatten().filter_map(here);
+            caps.map(|c| c.max.get()).fold(0.0, f64::max)
+        }
+    }
 }
 
 /// The ramp aimed at, m3/s per s: the clause's, else the whole cap over one stroke.

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use model::{AssetId, AssetKind, Forecast, Plan, PlanRequest, Site};
+use model::{AssetId, AssetKind, Cap, Forecast, Lawful, LongCap, Plan, PlanRequest, Site};
 use units::{CubicMetresPerSecond, Level, Mono, Series, Span, Utc, Window};
 
 use crate::state::{Phase, State};
@@ -84,7 +84,11 @@ fn request(state: &mut State, stamp: &Stamp, no: usize) -> Option<PlanRequest> {
     let tides = forecast.tides.iter().filter(|t| t.window.end() > as_of);
     let used_tides = tides.map(|t| (t.number, state.tallies.in_tide(t.number))).collect();
     let gate = &state.assets[outlet.gate.index()];
-    let flow_now = if state.active(outlet.gate) { gate.flow_target.max(0.0) } else { 0.0 };
+    let flow_now = if state.active(outlet.gate) {
+        gate.flow_target.max(0.0)
+    } else {
+        state.left_open_flow(outlet, stamp.utc)
+    };
     let available = site.assets.iter().map(|a| available(state, stamp, a.id)).collect();
     Some(PlanRequest {
         job: state.new_job(),
@@ -96,14 +100,28 @@ fn request(state: &mut State, stamp: &Stamp, no: usize) -> Option<PlanRequest> {
         level_now,
         inflow: inflow(storage, &span)?,
         outer_level: forecast.place(outlet.place).level.clone(),
-        lawful,
+        lawful: aimed(lawful),
         used_tides,
-        caps: licence::long_caps(&site, &state.tallies, as_of, outlet.gate),
+        caps: long_caps(&site, state, as_of, outlet.gate),
         available,
         flow_now: CubicMetresPerSecond::of(flow_now),
         closing_lead: closing_lead(&site, outlet.gate),
         forecast_digest: forecast.digest,
     })
+}
+
+/// Volume caps as they are aimed at: the meter errs, and the cap is on the water.
+fn aimed(mut lawful: Lawful) -> Lawful {
+    for w in &mut lawful.windows {
+        w.volume_max = w.volume_max.map(|c| Cap { max: c.max * ramp::VOLUME_AIM, ..c });
+    }
+    lawful
+}
+
+fn long_caps(site: &Site, state: &State, as_of: Utc, gate: AssetId) -> Vec<LongCap> {
+    let mut caps = licence::long_caps(site, &state.tallies, as_of, gate);
+    caps.iter_mut().for_each(|c| c.volume_max = c.volume_max * ramp::VOLUME_AIM);
+    caps
 }
 
 /// 1.5 stroke + lease + detection (rule 2).

@@ -94,8 +94,11 @@ pub(crate) struct AssetState {
     pub assisted_since: Option<Mono>,
     /// What was decided last, so that a change is written once.
     pub decided: Option<(bool, Vec<(model::By, model::About)>)>,
-    /// The position that an earlier term left, adopted at the next order.
+    /// What an earlier term, or an adapter that went away, left it doing: adopted at the next order
+    /// where its position shows it.
     pub carried: Option<Action>,
+    /// Until here it may still pass water that nobody sees: its adapter is gone.
+    pub unseen_until: Option<Mono>,
 }
 
 /// A command that has left and holds a lease.
@@ -285,6 +288,13 @@ impl State {
     /// The asset's own position feedback, percent, as the interlock would read it.
     pub(crate) fn position(&self, asset: AssetId, boot: Mono) -> Option<f64> {
         self.raw_of(self.site.asset(asset).position, boot)?.checked().ok()
+    }
+    /// What an outlet's gate passes that this term did not order: the metered flow of a gate that
+    /// was left open.
+    pub(crate) fn left_open_flow(&self, outlet: &Outlet, now: Utc) -> f64 {
+        let carried = self.assets[outlet.gate.index()].carried;
+        let open = carried.is_some_and(|a| a.is_active());
+        if open { self.metered_flow(outlet, now).unwrap_or(0.0).max(0.0) } else { 0.0 }
     }
     pub(crate) fn released_this_tide(&self, tide: TideNumber) -> CubicMetres {
         self.tallies.in_tide(tide)

@@ -104,10 +104,10 @@ fn adapter_down(
         let gone = Reading { signal: signal.id, value: 0.0, source_good: false, at: stamp.utc };
         state.validator.take(&gone, stamp.utc);
     }
-    for asset in state.site.assets.iter().filter(|a| a.adapter == adapter) {
-        if let Some(c) = &mut state.assets[asset.id.index()].command {
-            c.phase = Phase::Unknown;
-        }
+    let lost: Vec<AssetId> =
+        state.site.assets.iter().filter(|a| a.adapter == adapter).map(|a| a.id).collect();
+    for asset in lost {
+        drive::lose_sight(state, asset, &why, effects);
     }
     let adapter = state.site.adapters[adapter.index()].name.clone();
     effects.records.push(Entry::AdapterDown { adapter, why });
