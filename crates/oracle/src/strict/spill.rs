@@ -16,6 +16,7 @@ const USED_UP_M3: f64 = 10.0;
 /// the lowest working level, a positive head, and room under the caps of its tide and span.
 pub(crate) fn spills(run: &Run, rules: &Rules, report: &mut Report) {
     let unused = unused(run, rules);
+    let mut before: Option<Utc> = None;
     for pair in run.samples.windows(2) {
         let (a, b) = (&pair[0], &pair[1]);
         let volume_m3 = b.spilled_m3 - a.spilled_m3;
@@ -25,7 +26,17 @@ pub(crate) fn spills(run: &Run, rules: &Rules, report: &mut Report) {
         let first = unused.partition_point(|t| *t < a.utc - BACK);
         let Some(at) = unused.get(first).filter(|t| **t <= a.utc) else { continue };
         report.totals.spilled_avoidably_m3 += volume_m3;
-        report.findings.push(Finding::AvoidableSpill { at: a.utc, volume_m3, unused: *at });
+        match report.findings.last_mut() {
+            // One finding for a spill that goes on.
+            Some(Finding::AvoidableSpill { volume_m3: sum, .. }) if before == Some(a.utc) => {
+                *sum += volume_m3;
+            }
+            _ => {
+                let unused = *at;
+                report.findings.push(Finding::AvoidableSpill { at: a.utc, volume_m3, unused });
+            }
+        }
+        before = Some(b.utc);
     }
 }
 
