@@ -116,12 +116,6 @@ fn the_scanner_finds_an_edge_upwards_and_one_outwards() {
     let mut edges = Edges::new();
     edges.insert("units".to_owned(), set("planner serde"));
     edges.insert("planner".to_owned(), set("units"));
-    assert_eq!(
-        forbidden(&edges),
-        ["units -> planner", "units -> planner (outside)", "units -> serde (outside)"]
-            .into_iter()
-            .filter(|e| *e != "units -> planner (outside)")
-            .collect::<Vec<_>>()
-    );
+    assert_eq!(forbidden(&edges), ["units -> planner", "units -> serde (outside)"]);
     assert!(reaches(&edges, "units", "planner"));
 }

@@ -64,7 +64,7 @@ fn unsourced(text: &str) -> Vec<String> {
     for (i, line) in lines.iter().enumerate().filter(|(_, l)| is_val(l)) {
         let start = (0..i).rev().take_while(|n| !lines[*n].trim().is_empty()).last().unwrap_or(i);
         let doc = lines[start..i].join("\n");
-        let heads = ["Source:", "Where in it:", "Quantity and unit:", "Tolerance and why:"];
+        let heads = ["Source", "Where", "Quantity", "Tolerance"];
         if heads.iter().any(|h| !doc.contains(h)) {
             found.push(line.trim().to_owned());
         }

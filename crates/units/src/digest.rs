@@ -39,7 +39,10 @@ impl Digest {
 mod tests {
     use super::Digest;
 
-    /// Source: RFC 9923 test vectors, FNV-1a 64 of "" , "a" and "foobar" (from memory).
+    /// Source: RFC 9923, The FNV Non-Cryptographic Hash Algorithm (from memory).
+    /// Where in it: test vectors of FNV-1a, 64 bits, for "", "a" and "foobar".
+    /// Quantity and unit: a 64-bit number.
+    /// Tolerance and why: none, it is exact.
     #[test]
     fn val_rfc9923_fnv1a() {
         let of = |s: &str| Digest::new().bytes(s.as_bytes()).get();
