@@ -157,8 +157,8 @@ impl Walk<'_> {
 
     fn period(&mut self, n: usize, period: &Period, after: &ToGo) {
         self.used = 0.0;
-        let whole = Window::new(period.start(), period.end()).expect("a period has slots");
-        let by_long = self.ledgers.iter().map(|l| (l.left_by_end(&whole), Some(l.clause)));
+        let later = |l: &Ledger| l.left_later(period.start(), period.end());
+        let by_long = self.ledgers.iter().map(|l| (later(l), Some(l.clause)));
         let least = by_long.fold((period.allotment_m3, None), |a, b| if b.0 < a.0 { b } else { a });
         self.path.allotments.push(least);
         let mut on = OnLine { solved: None, volume: f64::NAN, used: 0.0 };

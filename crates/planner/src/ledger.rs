@@ -57,14 +57,18 @@ impl Ledger {
         };
         (self.volume_max - (self.until(end) - self.until(from))).max(0.0)
     }
-    /// The most that could be left by the end of a longer piece, with what ages out of it meanwhile.
-    pub(crate) fn left_by_end(&self, piece: &Window) -> f64 {
+    /// What will be left at `at` if nothing is released from `now` on: more than now, as what was
+    /// released ages out of a rolling span.
+    pub(crate) fn left_later(&self, now: Utc, at: Utc) -> f64 {
         match self.kind {
             LongCapKind::Rolling(span) => {
-                let since = self.until(piece.start()) - self.until(piece.end() - span);
-                (self.volume_max - since.max(0.0)).max(0.0)
+                let counts = self.until(now) - self.until(at - span);
+                (self.volume_max - counts.max(0.0)).max(0.0)
             }
-            LongCapKind::Fixed(_) => self.left(piece),
+            LongCapKind::Fixed(w) if w.start() < at && w.end() > now => {
+                (self.volume_max - (self.until(w.end()) - self.until(w.start()))).max(0.0)
+            }
+            LongCapKind::Fixed(_) => f64::INFINITY,
         }
     }
 }

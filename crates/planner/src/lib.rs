@@ -17,7 +17,9 @@
 //! Not here: tariffs by the hour, planning against several inflows at once, storages that share a
 //! resource, levels that must be held, and how long a pump has run or rested before the plan begins
 //! (the interlock keeps that). A pump's flow is taken as fixed whatever its lift. Two windows of
-//! different tides that touch are two releases.
+//! different tides that touch are two releases. Which tide gives way to a rolling cap is decided tide
+//! by tide, earliest first, and is not proved best; a gate opens on the 5-minute grid or with its
+//! window, not at the minute in which a head comes about.
 //!
 //! ```
 //! use planner::{PlanError, usable};

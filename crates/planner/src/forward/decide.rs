@@ -108,6 +108,9 @@ impl Walk<'_> {
     ) -> Option<f64> {
         let p = self.problem;
         let s = &period.slots[i];
+        if self.mode == Mode::Shut && !self.opens_for_good(period, i) {
+            return None;
+        }
         let from = if let Mode::Open(from) = self.mode { from } else { 0 };
         if !p.may_change(s, period.tide, from, to, self.volume)
             || (to > from && !self.runs_long(period, s, to, left))
@@ -138,6 +141,23 @@ impl Walk<'_> {
         };
         let starts = prices.pump_start * to.saturating_sub(from) as f64;
         Some(cost + stroke + starts + solved.at(i + slots, Mode::Open(to), used + m3))
+    }
+
+    /// Whether an opening now is not soon cut short by a longer cap that only has to age. If less
+    /// than half of what the tide will have may leave at once, it waits rather than open twice.
+    fn opens_for_good(&self, period: &Period, i: usize) -> bool {
+        let s = &period.slots[i];
+        let (now, end) = (s.slot.start(), period.end());
+        let aim = s.window.map_or(0.0, |w| self.problem.windows[w].flow_aim_m3_s);
+        let tide = period.allotment_m3 - self.used;
+        let all = self.ledgers.iter().map(|l| l.left_later(now, end)).fold(tide, f64::min);
+        let at_once = self.left(period, &s.slot).0 >= all / 2.0;
+        at_once
+            || period.slots[i..].iter().all(|later| {
+                let at = later.slot.end();
+                let wanted = all.min(aim * (at - now).as_seconds());
+                self.ledgers.iter().all(|l| l.left_later(now, at) + 1.0 >= wanted)
+            })
     }
 
     /// Whether what is left lets a pump that starts now run for its least time.

@@ -68,6 +68,9 @@ pub fn greedy(site: &Site, r: &PlanRequest) -> Outcome {
             let able = outfall.flow_m3_s(curve.level_m(volume), outer, 1.0).max(pumped);
             let down = (ramp * ((w.until - t).as_seconds() - DT_S)).max(0.0);
             let tail = (2.0 * ramp * left).sqrt();
+            // Like a plan, it opens on the 5-minute grid or as its window does.
+            let edge = t.floor_to(Span::minutes(5)) == t || t - w.from < Span::minutes(1);
+            let able = if flow > 0.0 || edge { able } else { 0.0 };
             let before = flow;
             flow = able.min(w.aim_m3_s).min(flow + ramp * DT_S).min(down).min(tail);
             out = ((before + flow) / 2.0 * DT_S).min(left);
