@@ -101,7 +101,7 @@ fn begun(
         return;
     }
     if let Now::Leased(end) = *state
-        && e.boot >= end
+        && e.boot + TO_THE_TICK >= end
     {
         let late = e.boot.since(end);
         report.totals.leases_run_out += 1;

@@ -172,6 +172,13 @@ fn a_rest_that_begins_after_the_lease_or_never_is_found() {
     plant(&mut in_time, end + Span::minutes(5), EventKind::RestDone { asset: 0 });
     let report = judge(&in_time, &rules());
     assert_eq!((report.findings, report.totals.leases_run_out), (Vec::new(), 1));
+    // A controller whose timer is read to the microsecond is a hair early, and has run out still.
+    let mut early = run.clone();
+    plant(&mut early, end, EventKind::RestBegun { asset: 0 });
+    plant(&mut early, end + Span::minutes(5), EventKind::RestDone { asset: 0 });
+    let begun = early.events.iter_mut().find(|e| e.kind == EventKind::RestBegun { asset: 0 });
+    begun.unwrap().boot = units::Mono::from_nanos(boot(end).as_nanos() - 900);
+    assert_eq!(judge(&early, &rules()).totals.leases_run_out, 1);
     let mut late = run.clone();
     plant(&mut late, end + Span::seconds(2), EventKind::RestBegun { asset: 0 });
     plant(&mut late, end + Span::minutes(5), EventKind::RestDone { asset: 0 });
