@@ -11,8 +11,8 @@ use crate::{Effects, Entry, Stamp};
 pub(crate) const BUCKET: Span = Span::minutes(5);
 /// Pieces older than this are of no interest to an averaging clause.
 const RECENT: Span = Span::hours(1);
-/// A longer silence than this is not filled with the last flow; the start of a term counts it.
-const GAP_MAX: Span = Span::minutes(2);
+/// Over a longer silence than this the greater of the flows before and after it is taken.
+const SILENCE: Span = Span::minutes(2);
 /// Less than this in a bucket is the meter's noise, not water.
 const VOLUME_LEAST_M3: f64 = 0.5;
 
@@ -22,8 +22,11 @@ pub(crate) fn run(state: &mut State, stamp: &Stamp, effects: &mut Effects) {
         let outlet = &site.outlets[no];
         let (flow, estimated) = flow_now(state, outlet, stamp);
         let now = stamp.utc;
-        let from = state.meters[no].last.replace(now).unwrap_or(now).max(now - GAP_MAX);
+        let meter = &mut state.meters[no];
+        let from = meter.last.replace(now).unwrap_or(now);
+        let before = core::mem::replace(&mut meter.last_flow, flow);
         if let Ok(piece) = Window::new(from, now) {
+            let flow = if piece.length() > SILENCE { flow.max(before) } else { flow };
             add(state, no, piece, flow, estimated, effects);
         }
         close_bucket(state, no, now, effects);

@@ -22,6 +22,9 @@ pub(crate) const RAMP_STEP: Span = Span::minutes(1);
 const FLOW_SHUT_M3_S: f64 = 0.03;
 /// A metered flow this near to the one aimed at is left alone: each correction is a stroke.
 const NEAR_ENOUGH: f64 = 0.04;
+/// Towards a window's end the ramp is taken slower than it may be: orders come a little more than a
+/// minute apart, and none may be left to catch up.
+const END_SHARE: f64 = 0.8;
 /// Share of a volume cap that is aimed at: the meter errs by a per cent or so, and the cap is on the
 /// water, not on the reading.
 pub(crate) const VOLUME_AIM: f64 = 0.985;
@@ -42,7 +45,7 @@ fn limits(state: &State, stamp: &Stamp, asset: AssetId, decision: &Decision) -> 
     let ramp_m3_s2 = ramp(state, asset, cap);
     let mut flow_m3_s = cap * settings.flow_aim;
     if let Some(left_s) = time_left_s(state, stamp, asset) {
-        flow_m3_s = flow_m3_s.min(ramp_m3_s2 * left_s.max(0.0));
+        flow_m3_s = flow_m3_s.min(END_SHARE * ramp_m3_s2 * left_s.max(0.0));
     }
     if let Some(volume) = guarded.and_then(|g| g.volume_left) {
         let left_m3 =
@@ -147,14 +150,17 @@ pub(crate) fn next_opening(
     if goal.hand {
         return (now != openings[4]).then_some(openings[4]);
     }
-    learn_trim(state, stamp, asset, target.get(), &openings);
     let limits = limits(state, stamp, asset, decision);
     let prev = state.assets[asset.index()].flow_target;
-    let step = limits.ramp_m3_s2 * dt.min(RAMP_STEP * 2).as_seconds();
+    let step = limits.ramp_m3_s2 * RAMP_STEP.as_seconds();
     let flow = target.get().min(limits.flow_m3_s).clamp(prev - step, prev + step);
-    if flow < FLOW_SHUT_M3_S && flow < prev {
+    if flow < FLOW_SHUT_M3_S && flow < prev && prev <= step {
         return Some(Percent::ZERO);
     }
+    let flow = flow.max(FLOW_SHUT_M3_S);
+    // What the ramp leaves of this step is the trim's: both together stay within it.
+    let room = (step - (flow - prev).abs()).max(0.0) / prev.max(1e-6);
+    learn_trim(state, stamp, asset, (target.get(), &openings), room);
     if (flow - prev).abs() < NEAR_ENOUGH * prev / 2.0 && near_enough(state, stamp, asset) {
         return None;
     }
@@ -180,8 +186,8 @@ fn learn_trim(
     state: &mut State,
     stamp: &Stamp,
     asset: AssetId,
-    target_m3_s: f64,
-    openings: &[Percent; 5],
+    (target_m3_s, openings): (f64, &[Percent; 5]),
+    room: f64,
 ) {
     let Some(outlet) = state.site.outlet_of(asset) else { return };
     let Some(metered) = state.metered_flow(outlet, stamp.utc) else { return };
@@ -195,8 +201,7 @@ fn learn_trim(
     {
         return;
     }
-    // The gate lags a ramp by less than a step of it, so a growing flow is not read as a fault.
-    let ratio = (aimed / metered).clamp(0.92, 1.08);
+    let ratio = (aimed / metered).clamp(1.0 - room, 1.0 + room);
     let trim = (slot.trim * ratio).clamp(TRIM_LEAST, TRIM_MOST);
     state.assets[asset.index()].trim = trim;
 }
@@ -214,13 +219,13 @@ pub(crate) fn closing_step(state: &mut State, stamp: &Stamp, asset: AssetId) -> 
     let flow = state.assets[asset.index()].flow_target;
     let Some(command) = state.assets[asset.index()].command else { return Closing::Shut };
     let step = ramp(state, asset, f64::MAX) * RAMP_STEP.as_seconds();
-    if flow - step < FLOW_SHUT_M3_S {
+    if flow <= step {
         return Closing::Shut;
     }
     if since_order(state, stamp, asset).is_some_and(|dt| dt < RAMP_STEP) {
         return Closing::NotYet;
     }
-    let next = flow - step;
+    let next = (flow - step).max(FLOW_SHUT_M3_S);
     state.assets[asset.index()].flow_target = next;
     let opening = command.action.setting().get() * next / flow;
     Closing::To(Percent::clamped((opening * 10.0).round() / 10.0))

@@ -126,6 +126,8 @@ pub(crate) enum Phase {
 #[derive(Clone, PartialEq, Debug, Default)]
 pub(crate) struct Meter {
     pub last: Option<Utc>,
+    /// The flow at `last`, m3/s.
+    pub last_flow: f64,
     pub bucket: Option<Window>,
     pub volume: f64,
     pub estimated: bool,
