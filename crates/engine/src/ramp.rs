@@ -6,8 +6,9 @@
 //! * what can be ramped down again in the time left to the window's end, less draining,
 //! * what can be ramped down again within the volume left: `q^2 / 2r`,
 //!
-//! reached no faster than the ramp `r`. The opening for a flow is the plan's model of it, corrected
-//! by a trim that the meter teaches.
+//! reached no faster than the ramp `r`. While the meter is good and says more than a trickle, each
+//! step goes from the metered flow and the opening in proportion, so that no error of the model adds
+//! up; else the opening is the plan's model of it.
 
 use model::{AssetId, AssetKind, ClauseId, ClauseKind, EdgeAnchor, Lawful, Setpoint};
 use units::{Mono, Percent, Span};
@@ -28,9 +29,8 @@ const END_SHARE: f64 = 0.8;
 /// Share of a volume cap that is aimed at: the meter errs by a per cent or so, and the cap is on the
 /// water, not on the reading.
 pub(crate) const VOLUME_AIM: f64 = 0.985;
-/// The trim stays within a factor that no honest model misses by.
-const TRIM_LEAST: f64 = 0.6;
-const TRIM_MOST: f64 = 1.6;
+/// Above this the meter steers; below, the model.
+const TRICKLE_M3_S: f64 = 0.15;
 
 /// What the flow may do, in plain numbers.
 struct Limits {
@@ -104,10 +104,8 @@ fn opening_for(target_m3_s: f64, openings: &[Percent; 5], flow_m3_s: f64) -> f64
 
 fn set(state: &mut State, asset: AssetId, goal: &Goal, flow_m3_s: f64) -> Option<Percent> {
     let Setpoint::Release { target, openings } = goal.setpoint else { return None };
-    let slot = &mut state.assets[asset.index()];
-    slot.flow_target = flow_m3_s;
-    let opening = opening_for(target.get(), &openings, flow_m3_s) * slot.trim;
-    Some(Percent::clamped((opening * 10.0).round() / 10.0))
+    state.assets[asset.index()].flow_target = flow_m3_s;
+    Some(tenth(opening_for(target.get(), &openings, flow_m3_s)))
 }
 
 /// The opening that begins a release; `None` if nothing may flow that would be worth it.
@@ -122,7 +120,6 @@ pub(crate) fn first_opening(
     if goal.hand {
         return Some(openings[4]);
     }
-    state.assets[asset.index()].trim = 1.0;
     let limits = limits(state, stamp, asset, decision);
     let from = state.assets[asset.index()].flow_target;
     let step = limits.ramp_m3_s2 * RAMP_STEP.as_seconds();
@@ -151,59 +148,41 @@ pub(crate) fn next_opening(
         return (now != openings[4]).then_some(openings[4]);
     }
     let limits = limits(state, stamp, asset, decision);
-    let prev = state.assets[asset.index()].flow_target;
     let step = limits.ramp_m3_s2 * RAMP_STEP.as_seconds();
-    let flow = target.get().min(limits.flow_m3_s).clamp(prev - step, prev + step);
+    let aim = target.get().min(limits.flow_m3_s);
+    let least = state.site.settings.opening_step_min.get();
+    if let Some(metered) = metered_more_than_a_trickle(state, stamp, asset) {
+        let flow = aim.clamp(metered - step, metered + step).max(FLOW_SHUT_M3_S);
+        state.assets[asset.index()].flow_target = flow;
+        if (flow / metered - 1.0).abs() <= NEAR_ENOUGH {
+            return None;
+        }
+        let opening = tenth(now.get() * flow / metered);
+        return ((opening.get() - now.get()).abs() >= least.min(now.get() / 10.0))
+            .then_some(opening);
+    }
+    let prev = state.assets[asset.index()].flow_target;
+    let flow = aim.clamp(prev - step, prev + step);
     if flow < FLOW_SHUT_M3_S && flow < prev && prev <= step {
         return Some(Percent::ZERO);
     }
-    let flow = flow.max(FLOW_SHUT_M3_S);
-    // What the ramp leaves of this step is the trim's: both together stay within it.
-    let room = (step - (flow - prev).abs()).max(0.0) / prev.max(1e-6);
-    learn_trim(state, stamp, asset, (target.get(), &openings), room);
-    if (flow - prev).abs() < NEAR_ENOUGH * prev / 2.0 && near_enough(state, stamp, asset) {
-        return None;
-    }
-    let opening = set(state, asset, goal, flow)?;
-    let least = state.site.settings.opening_step_min.get();
-    ((opening.get() - now.get()).abs() >= least).then_some(opening)
+    let opening = set(state, asset, goal, flow.max(FLOW_SHUT_M3_S))?;
+    ((opening.get() - now.get()).abs() >= least.min(0.5)).then_some(opening)
+}
+
+/// The metered flow, where it says enough to steer by.
+fn metered_more_than_a_trickle(state: &State, stamp: &Stamp, asset: AssetId) -> Option<f64> {
+    let outlet = state.site.outlet_of(asset)?;
+    state.metered_flow(outlet, stamp.utc).filter(|m| *m > TRICKLE_M3_S)
+}
+
+/// Openings are told to a tenth of a per cent.
+fn tenth(percent: f64) -> Percent {
+    Percent::clamped((percent * 10.0).round() / 10.0)
 }
 
 fn since_order(state: &State, stamp: &Stamp, asset: AssetId) -> Option<Span> {
     state.assets[asset.index()].last_move.map(|t| stamp.boot.since(t))
-}
-
-fn near_enough(state: &State, stamp: &Stamp, asset: AssetId) -> bool {
-    let aimed = state.assets[asset.index()].flow_target;
-    let outlet = state.site.outlet_of(asset);
-    let metered = outlet.and_then(|o| state.metered_flow(o, stamp.utc));
-    metered.is_some_and(|m| (m / aimed.max(1e-6) - 1.0).abs() <= NEAR_ENOUGH)
-}
-
-/// Where a good meter differs from the flow aimed at, the model's opening is corrected, a little at
-/// a time. A gate that is fully open says nothing about the model.
-fn learn_trim(
-    state: &mut State,
-    stamp: &Stamp,
-    asset: AssetId,
-    (target_m3_s, openings): (f64, &[Percent; 5]),
-    room: f64,
-) {
-    let Some(outlet) = state.site.outlet_of(asset) else { return };
-    let Some(metered) = state.metered_flow(outlet, stamp.utc) else { return };
-    let slot = &state.assets[asset.index()];
-    let aimed = slot.flow_target;
-    let full = opening_for(target_m3_s, openings, aimed) * slot.trim >= 99.0;
-    if aimed < 0.1
-        || metered < 0.05
-        || (full && metered <= aimed)
-        || (metered / aimed - 1.0).abs() <= NEAR_ENOUGH
-    {
-        return;
-    }
-    let ratio = (aimed / metered).clamp(1.0 - room, 1.0 + room);
-    let trim = (slot.trim * ratio).clamp(TRIM_LEAST, TRIM_MOST);
-    state.assets[asset.index()].trim = trim;
 }
 
 /// One step of a closing along the ramp.
@@ -216,7 +195,8 @@ pub(crate) enum Closing {
 /// Closing when nothing but the plan or a volume ends the release: the opening shrinks in
 /// proportion to the flow, a step a minute.
 pub(crate) fn closing_step(state: &mut State, stamp: &Stamp, asset: AssetId) -> Closing {
-    let flow = state.assets[asset.index()].flow_target;
+    let metered = metered_more_than_a_trickle(state, stamp, asset);
+    let flow = metered.unwrap_or(state.assets[asset.index()].flow_target);
     let Some(command) = state.assets[asset.index()].command else { return Closing::Shut };
     let step = ramp(state, asset, f64::MAX) * RAMP_STEP.as_seconds();
     if flow <= step {
@@ -228,7 +208,7 @@ pub(crate) fn closing_step(state: &mut State, stamp: &Stamp, asset: AssetId) -> 
     let next = (flow - step).max(FLOW_SHUT_M3_S);
     state.assets[asset.index()].flow_target = next;
     let opening = command.action.setting().get() * next / flow;
-    Closing::To(Percent::clamped((opening * 10.0).round() / 10.0))
+    Closing::To(tenth(opening))
 }
 
 /// When the next step of a running release is due.

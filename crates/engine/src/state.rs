@@ -84,10 +84,8 @@ pub(crate) struct AssetState {
     pub tripped: Option<String>,
     pub confirmed_tide: Option<TideNumber>,
     pub command: Option<Command>,
-    /// The flow that the gate's last order was for, m3/s, before the trim.
+    /// The flow that the gate's last order was for, m3/s.
     pub flow_target: f64,
-    /// The model's opening times this gives the metered flow; 1 where nothing is known.
-    pub trim: f64,
     pub last_move: Option<Mono>,
     pub last_stop: Option<Mono>,
     pub starts: Vec<Utc>,
@@ -152,7 +150,6 @@ impl State {
     pub fn new(site: Arc<Site>, config: Config) -> Self {
         let rules = site.assets.iter().map(|a| rules_of(&site, &config, a)).collect();
         let validator = Validator::new(&site);
-        let fresh = AssetState { trim: 1.0, ..AssetState::default() };
         let outlets = site.outlets.len();
         Self {
             rules,
@@ -169,7 +166,7 @@ impl State {
             adapters_up: vec![false; site.adapters.len()],
             validator,
             raw: vec![None; site.signals.len()],
-            assets: vec![fresh; site.assets.len()],
+            assets: vec![AssetState::default(); site.assets.len()],
             forecast: None,
             lawful: vec![None; outlets],
             plans: vec![None; outlets],

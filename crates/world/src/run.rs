@@ -63,6 +63,7 @@ pub struct World {
     seq: u64,
     term: u64,
     daemon_back: Option<Utc>,
+    killed_at: Option<Utc>,
     adapter_back: Option<Utc>,
     next_sense: Utc,
     next_act: usize,
@@ -93,6 +94,7 @@ impl World {
             seq: 0,
             term: 0,
             daemon_back: Some(now),
+            killed_at: None,
             adapter_back: Some(now + Span::seconds(1)),
             next_sense: now + Span::seconds(2),
             next_act: 0,
@@ -149,7 +151,9 @@ impl World {
 
     fn next_instant(&self) -> Utc {
         let fault = self.setup.faults.get(self.next_fault).map(Fault::at);
-        let back = self.daemon_back.into_iter().chain(self.adapter_back);
+        // An adapter that comes back while the daemon is down is seen when the daemon is.
+        let adapter_back = self.adapter_back.filter(|_| self.daemon_back.is_none());
+        let back = self.daemon_back.into_iter().chain(adapter_back);
         let mut next = back.chain(fault).fold(self.next_sense, Utc::min);
         if self.daemon_back.is_none() {
             let act = self.setup.acts.get(self.next_act).map(|a| a.0);
@@ -172,6 +176,7 @@ impl World {
             match fault {
                 Fault::DaemonKilled { back_after, .. } => {
                     self.daemon_back = Some(self.now + back_after);
+                    self.killed_at = Some(self.now);
                     self.products.clear();
                 }
                 Fault::AdapterKilled { back_after, .. } => {
@@ -192,7 +197,9 @@ impl World {
             self.daemon_back = None;
             self.term += 1;
             self.state = fresh(&self.setup.site);
-            let carried = (self.setup.carry)(&self.setup.site, &self.run.entries);
+            let mut carried = (self.setup.carry)(&self.setup.site, &self.run.entries);
+            // What the daemon's heartbeat file would say.
+            carried.last_seen = self.killed_at.or(carried.last_seen);
             self.feed(Event::Started(Box::new(carried)))?;
             if self.adapter_back.is_none() {
                 self.adapter_back = Some(self.now + Span::seconds(2));

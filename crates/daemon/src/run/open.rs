@@ -14,6 +14,7 @@ use host::{AdapterSpec, Host, HostEvent};
 use journal::Journal;
 use model::{Adapter, AdapterProgram, Site, Term};
 use record::Fold;
+use units::Utc;
 
 use super::input::Input;
 use super::shell::{Parts, Shell};
@@ -36,7 +37,9 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
     let mut fold = Fold::new(&site);
     let journal = Journal::open(&state_dir, &mut |row| fold.push(&row))
         .with_context(|| format!("opening the journal in {}", state_dir.display()))?;
-    let carried: Carried = fold.finish();
+    let mut carried: Carried = fold.finish();
+    let heartbeat = state_dir.join(site.settings.heartbeat_file.as_deref().unwrap_or("heartbeat"));
+    carried.last_seen = carried.last_seen.max(last_beat(&heartbeat));
     let term = Term(journal.next_term());
     tracing::info!(term = term.0, rows = journal.rows(), "journal verified");
     let (to, inbox) = channel::<Input>();
@@ -48,7 +51,7 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
         host: start_host(&site, args, &state_dir, term, clock, &to, tokens_to)?,
         jobs: workers::start(site.clone(), to.clone())?,
         watch: Watch::new(None),
-        heartbeat: site.settings.heartbeat_file.as_ref().map(|f| state_dir.join(f)),
+        heartbeat,
         rows: args.rows,
         site_arg: args.site.site.display().to_string(),
         site,
@@ -60,6 +63,12 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
     control::listen(&paths::socket(&state_dir), to.clone())?;
     signals(to)?;
     Ok(Shell::new(parts, carried))
+}
+
+/// When the last life of the daemon was last well: an outage is counted from here, since a quiet
+/// hour leaves no row.
+fn last_beat(heartbeat: &Path) -> Option<Utc> {
+    Utc::parse(fs::read_to_string(heartbeat).ok()?.trim()).ok()
 }
 
 fn logging() {

@@ -32,7 +32,7 @@ pub struct Parts {
     pub journal: Handle,
     pub host: Host,
     pub jobs: Sender<Job>,
-    pub heartbeat: Option<PathBuf>,
+    pub heartbeat: PathBuf,
     pub inbox: Receiver<Input>,
     pub tokens: Receiver<()>,
 }
@@ -122,7 +122,7 @@ impl Shell {
     /// Touches the heartbeat file, for telemetry that watches its age (rule 17).
     fn beat(&mut self) {
         let now = self.parts.clock.boot();
-        let Some(file) = &self.parts.heartbeat else { return };
+        let file = &self.parts.heartbeat;
         if now < self.beat_at {
             return;
         }
