@@ -3,3 +3,4 @@
 mod site;
 mod site_good;
 mod site_rows;
+mod thirty_days;

@@ -11,7 +11,7 @@ use std::thread;
 use std::time::{Duration, Instant};
 
 use model::Site;
-use oracle::strict::{Line, judge, lost};
+use oracle::{Line, judge, lost};
 use plant::{SplitMix64, Truth};
 use serde_json::Value;
 use units::{Span, Utc, Window};

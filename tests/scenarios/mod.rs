@@ -1,4 +1,6 @@
 //! Stories: a named site and tide through the engine.
 
+mod delaware;
 pub mod tarrow;
+pub mod thirty_days;
 mod why;

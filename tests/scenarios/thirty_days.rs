@@ -138,7 +138,7 @@ fn scen_thirty_days_with_faults_release_what_foresight_could_and_break_nothing()
         run.record.samples.iter().filter_map(|s| Some((s.utc, s.current_m_s?))).collect();
     let rules = judging::rules_for(&site, &span, &current);
     let judged = judging::run_of(&run.record);
-    let report = oracle::strict::judge(&judged, &rules);
+    let report = oracle::judge(&judged, &rules);
     let truth = Truth::drawn(site.simulation.as_ref().unwrap().seed);
     let foresight_m3 = judging::foresight_m3(&site, &truth, &judged, &rules);
     let share = report.totals.released_m3 / foresight_m3;

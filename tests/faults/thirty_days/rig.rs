@@ -8,7 +8,7 @@ use std::sync::{Arc, Mutex};
 use std::thread;
 use std::time::{Duration, Instant};
 
-use oracle::strict::{Event, EventKind, Run, Sample};
+use oracle::{Event, EventKind, Run, Sample};
 use serde_json::Value;
 use units::{Mono, Utc};
 

@@ -2,16 +2,14 @@
 //! true tide, and the works as it truly is.
 
 use model::{AssetKind, ClauseKind, Site};
-use oracle::strict::{
-    Asset, EventKind, FixedCap, Foresight, GateHead, LawfulWindow, Rules, Run, TideCap,
-};
+use oracle::{Asset, EventKind, FixedCap, Foresight, GateHead, LawfulWindow, Rules, Run, TideCap};
 use plant::Truth;
 use structures::{Friction, Outfall, Pipe};
 use units::{Series, Span, Utc, Window};
 
 /// The plant's record in the judge's own types.
 pub fn run_of(record: &plant::Record) -> Run {
-    let sample = |s: &plant::Sample| oracle::strict::Sample {
+    let sample = |s: &plant::Sample| oracle::Sample {
         utc: s.utc,
         boot: s.boot,
         level_m: s.level_m,
@@ -23,9 +21,8 @@ pub fn run_of(record: &plant::Record) -> Run {
         released_m3: s.totals.released_m3,
         spilled_m3: s.totals.spilled_m3,
     };
-    let event = |e: &plant::Event| {
-        Some(oracle::strict::Event { utc: e.utc, boot: e.boot, kind: kind(&e.kind)? })
-    };
+    let event =
+        |e: &plant::Event| Some(oracle::Event { utc: e.utc, boot: e.boot, kind: kind(&e.kind)? });
     Run {
         samples: record.samples.iter().map(sample).collect(),
         events: record.events.iter().filter_map(event).collect(),
@@ -175,9 +172,5 @@ pub fn foresight_m3(site: &Site, truth: &Truth, run: &Run, rules: &Rules) -> f64
     let crest_m = site.storage(outlet.storage).level_spill.get();
     let kept = curve.iter().filter(|(l, _)| l.get() <= crest_m);
     let storage: Vec<(f64, f64)> = kept.map(|(l, v)| (l.get(), v.get())).collect();
-    oracle::strict::foresight(
-        run,
-        rules,
-        &Foresight { storage: &storage, capacity_m3_s: &capacity },
-    )
+    oracle::foresight(run, rules, &Foresight { storage: &storage, capacity_m3_s: &capacity })
 }

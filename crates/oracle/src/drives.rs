@@ -2,8 +2,8 @@
 
 use units::{Span, Utc};
 
-use crate::strict::flow::between;
-use crate::strict::{Event, EventKind, Finding, Report, Rules, Run};
+use crate::flow::between;
+use crate::{Event, EventKind, Finding, Report, Rules, Run};
 
 /// An opening smaller than this is the same position read back, percent.
 const SAME_PERCENT: f64 = 0.5;
@@ -43,9 +43,8 @@ fn barred(rules: &Rules, local: &[Option<Utc>], asset: usize, at: Utc) -> Option
     if local[asset].is_some_and(known) {
         return Some("it is in local control".to_owned());
     }
-    let held = |b: &&crate::strict::Barred| {
-        b.asset == asset && b.window.contains(at) && known(b.window.start())
-    };
+    let held =
+        |b: &&crate::Barred| b.asset == asset && b.window.contains(at) && known(b.window.start());
     rules.barred.iter().find(held).map(|b| b.why.clone())
 }
 

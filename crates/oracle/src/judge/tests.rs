@@ -3,8 +3,8 @@
 use units::{Span, Window};
 
 use super::judge;
-use crate::strict::fixture::{boot, good_run, minute, plant, ramped, rules, run_with};
-use crate::strict::{Barred, EventKind, Finding, Foresight, Line, Run, foresight, lost};
+use crate::fixture::{boot, good_run, minute, plant, ramped, rules, run_with};
+use crate::{Barred, EventKind, Finding, Foresight, Line, Run, foresight, lost};
 
 fn findings(run: &Run) -> Vec<Finding> {
     judge(run, &rules()).findings

@@ -2,7 +2,7 @@
 
 use units::{Mono, Span, Utc};
 
-use crate::strict::{Event, EventKind, Finding, Report, Rules, Run};
+use crate::{Event, EventKind, Finding, Report, Rules, Run};
 
 /// The boot clock is read to the microsecond; a step of the plant ends within one of it.
 const TO_THE_TICK: Span = Span::millis(1);

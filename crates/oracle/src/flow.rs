@@ -2,7 +2,7 @@
 
 use units::{Span, Utc, Window, Windows};
 
-use crate::strict::{EventKind, Finding, Report, Rules, Run, Sample};
+use crate::{EventKind, Finding, Report, Rules, Run, Sample};
 
 /// The running total at any instant: exact at samples, straight between, level beyond the ends.
 pub(crate) struct Total<'a> {
@@ -148,8 +148,7 @@ fn resting(run: &Run) -> Windows {
         });
         done.map_or(from, |e| e.utc) + RUNS_OUT
     };
-    let protection =
-        |e: &&crate::strict::Event| matches!(e.kind, EventKind::ProtectionStopped { .. });
+    let protection = |e: &&crate::Event| matches!(e.kind, EventKind::ProtectionStopped { .. });
     let stopped = run.events.iter().filter(protection);
     begun.chain(stopped).filter_map(|e| Window::new(e.utc, end(e.utc)).ok()).collect()
 }

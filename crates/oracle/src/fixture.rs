@@ -2,7 +2,7 @@
 
 use units::{Mono, Span, Utc, Window};
 
-use crate::strict::{
+use crate::{
     Asset, Event, EventKind, FixedCap, GateHead, LawfulWindow, Rules, Run, Sample, TideCap,
 };
 

@@ -1,6 +1,6 @@
 //! All rules over one run.
 
-use crate::strict::{Report, Rules, Run, caps, drives, flow, rests, spill};
+use crate::{Report, Rules, Run, caps, drives, flow, rests, spill};
 
 /// Judges the run by every rule; findings by rule, each in order of time.
 pub fn judge(run: &Run, rules: &Rules) -> Report {

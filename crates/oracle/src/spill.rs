@@ -2,8 +2,8 @@
 
 use units::{Span, Utc, Windows};
 
-use crate::strict::flow::Total;
-use crate::strict::{Finding, Report, Rules, Run, Sample};
+use crate::flow::Total;
+use crate::{Finding, Report, Rules, Run, Sample};
 
 /// How far back an unused minute counts.
 const BACK: Span = Span::hours(24);

@@ -1,7 +1,7 @@
 //! Volumes: on each tide, in any span, in each fixed stretch.
 
-use crate::strict::flow::Total;
-use crate::strict::{Finding, Report, Rules, Run};
+use crate::flow::Total;
+use crate::{Finding, Report, Rules, Run};
 
 /// Rounding alone is no breach, m3.
 const FORGIVEN_M3: f64 = 1e-6;
