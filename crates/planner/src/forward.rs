@@ -84,8 +84,9 @@ struct Walk<'a> {
     mode: Mode,
     throttle: Throttle,
     ledgers: Vec<Ledger>,
-    /// Released in this period.
+    /// Released in this period, and the most that may be.
     used: f64,
+    limit: f64,
 }
 
 /// The line that a period is on, from some slot.
@@ -95,7 +96,8 @@ struct OnLine {
     used: f64,
 }
 
-pub(crate) fn walk(problem: &Problem, after: &[ToGo]) -> Path {
+/// `limits_m3`: what each period may release at the most, whatever its caps.
+pub(crate) fn walk(problem: &Problem, after: &[ToGo], limits_m3: &[f64]) -> Path {
     let request = problem.request;
     let start = request.span.start();
     let running = request.flow_now.get() > 0.0;
@@ -108,6 +110,7 @@ pub(crate) fn walk(problem: &Problem, after: &[ToGo]) -> Path {
         throttle: Throttle { flow_m3_s: request.flow_now.get(), closing: None },
         ledgers: request.caps.iter().map(ledger).collect(),
         used: 0.0,
+        limit: f64::INFINITY,
     };
     walk.path.volumes.push((start, walk.volume));
     let mut t = start;
@@ -116,6 +119,7 @@ pub(crate) fn walk(problem: &Problem, after: &[ToGo]) -> Path {
             walk.shut();
             walk.fill(t, period.start());
         }
+        walk.limit = limits_m3[n];
         walk.period(n, period, &after[n]);
         t = period.end();
     }
@@ -159,7 +163,9 @@ impl Walk<'_> {
         self.used = 0.0;
         let later = |l: &Ledger| l.left_later(period.start(), period.end());
         let by_long = self.ledgers.iter().map(|l| (later(l), Some(l.clause)));
-        let least = by_long.fold((period.allotment_m3, None), |a, b| if b.0 < a.0 { b } else { a });
+        let least = by_long.fold((period.allotment_m3.min(self.limit), None), |a, b| {
+            if b.0 < a.0 { b } else { a }
+        });
         self.path.allotments.push(least);
         let mut on = OnLine { solved: None, volume: f64::NAN, used: 0.0 };
         let mut inflow = 0.0;
@@ -180,7 +186,15 @@ impl Walk<'_> {
 
     /// What is left for a release in this piece, and the cap that leaves no more.
     fn left(&self, period: &Period, piece: &Window) -> (f64, Option<ClauseId>) {
-        let tide = ((period.allotment_m3 - self.used).max(0.0), period.volume_by);
+        // Held back for a later tide's sake: then the longer cap is the reason.
+        let tide = if self.limit < period.allotment_m3 {
+            let later = |l: &&Ledger| l.left_later(piece.start(), period.end());
+            let least = self.ledgers.iter().min_by(|a, b| later(a).total_cmp(&later(b)));
+            (self.limit, least.map(|l| l.clause))
+        } else {
+            (period.allotment_m3, period.volume_by)
+        };
+        let tide = ((tide.0 - self.used).max(0.0), tide.1);
         let long = self.ledgers.iter().map(|l| (l.left(piece), Some(l.clause)));
         long.fold(tide, |a, b| if b.0 < a.0 { b } else { a })
     }

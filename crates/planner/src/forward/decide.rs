@@ -149,7 +149,7 @@ impl Walk<'_> {
         let s = &period.slots[i];
         let (now, end) = (s.slot.start(), period.end());
         let aim = s.window.map_or(0.0, |w| self.problem.windows[w].flow_aim_m3_s);
-        let tide = period.allotment_m3 - self.used;
+        let tide = period.allotment_m3.min(self.limit) - self.used;
         let all = self.ledgers.iter().map(|l| l.left_later(now, end)).fold(tide, f64::min);
         let at_once = self.left(period, &s.slot).0 >= all / 2.0;
         at_once

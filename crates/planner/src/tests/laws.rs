@@ -98,7 +98,7 @@ proptest! {
         );
     }
 
-    /// The programme's grids may round it by 40 m3, an eighth of a slot's full flow. Windows are only
+    /// Rounding in the programme's grids is all that may stand against it: 5 m3. Windows are only
     /// taken away where no rolling cap stands: which tide gives way to a rolling cap is decided
     /// tide by tide, and with windows all day long that is not always the best choice.
     #[test]
@@ -115,6 +115,6 @@ proptest! {
             spilled_m3(&plan(&site, &request(&site, &case)).unwrap())
         };
         let (with, without) = (spill(&base), spill(&less));
-        prop_assert!(without <= with + 40.0, "{without} m3 without, {with} m3 with");
+        prop_assert!(without <= with + 5.0, "{without} m3 without, {with} m3 with");
     }
 }
