@@ -30,7 +30,7 @@ const END_SHARE: f64 = 0.8;
 /// water, not on the reading.
 pub(crate) const VOLUME_AIM: f64 = 0.985;
 /// Above this the meter steers; below, the model.
-const TRICKLE_M3_S: f64 = 0.15;
+const TRICKLE_M3_S: f64 = 0.06;
 
 /// What the flow may do, in plain numbers.
 struct Limits {
