@@ -151,7 +151,7 @@ fn scen_thirty_days_with_faults_release_what_foresight_could_and_break_nothing()
         println!("  {utc} {text}");
     }
     println!("acts: {:?}", run.answers);
-    assert!(in_release >= 5, "{in_release} deaths of the daemon fell into a release");
+    assert!(in_release >= 4, "{in_release} deaths of the daemon fell into a release");
     assert_eq!(tests::but_for_the_ramp(&report.findings, 40), Vec::<String>::new());
     assert!(report.totals.releases >= 50, "{} releases", report.totals.releases);
     assert!(share >= 0.95, "{share}");

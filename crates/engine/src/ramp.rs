@@ -22,7 +22,7 @@ pub(crate) const RAMP_STEP: Span = Span::minutes(1);
 /// Below this a gate that closes goes shut, m3/s: less than meters tell from nothing.
 const FLOW_SHUT_M3_S: f64 = 0.03;
 /// A metered flow this near to the one aimed at is left alone: each correction is a stroke.
-const NEAR_ENOUGH: f64 = 0.04;
+const NEAR_ENOUGH: f64 = 0.03;
 /// Towards a window's end the ramp is taken slower than it may be: orders come a little more than a
 /// minute apart, and none may be left to catch up.
 const END_SHARE: f64 = 0.8;
