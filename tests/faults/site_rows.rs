@@ -87,7 +87,7 @@ pub const ROWS: &[Wrong] = wrong! {
         "S015" at "volume_max", "\"380,000 m3\""; "one plain number"; "digits and a point"
     "a negative cap" LICENCE: "volume_max = \"16500 m3\"" => "volume_max = \"-16500 m3\"";
         "S015" at "volume_max", "\"-16500 m3\""; "from 1 to"; "check the figure"
-    "not a number" SITE: "flow_aim = 0.95" => "flow_aim = nan";
+    "not a number" SITE: "flow_aim = 0.94" => "flow_aim = nan";
         "S015" at "flow_aim", "nan"; "from 0.5 to 1"; "check the figure"
     "an amplitude that is not a number" SITE: "[\"S2\",  \"1.06 m\", \"215 deg\"]" => "[\"S2\",  \"nan m\", \"215 deg\"]";
         "S015" at "  [\"S2\"", "\"nan m\""; "one plain number"; "digits and a point"
