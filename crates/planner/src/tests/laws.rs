@@ -49,7 +49,7 @@ prop_compose! {
 
 proptest! {
     #![proptest_config(ProptestConfig {
-        failure_persistence: None, cases: 400, ..ProptestConfig::default()
+        failure_persistence: None, cases: 100, ..ProptestConfig::default()
     })]
 
     #[test]
