@@ -3,7 +3,7 @@
 
 mod decide;
 
-use model::ClauseId;
+use model::{ClauseId, PlanRequest};
 use units::{Span, Utc, Window};
 
 use crate::dp::{Mode, Solved, ToGo};
@@ -107,7 +107,7 @@ pub(crate) fn walk(problem: &Problem, after: &[ToGo], limits_m3: &[f64]) -> Path
         path: Path::default(),
         volume: problem.volume_now,
         mode: if running { Mode::Open(0) } else { Mode::Shut },
-        throttle: Throttle { flow_m3_s: request.flow_now.get(), closing: None },
+        throttle: Throttle { flow_m3_s: lawful_now(request), closing: None },
         ledgers: request.caps.iter().map(ledger).collect(),
         used: 0.0,
         limit: f64::INFINITY,
@@ -283,4 +283,12 @@ impl Walk<'_> {
         let does = Does::Release { pumps, target_m3_s, bound: most.1 };
         Step { does, released_m3: released, energy_kwh, volume_middle, ..step }
     }
+}
+
+/// The flow to go on from: a running one that stands over its window's cap (a meter's error, or a
+/// smaller tide begun) is taken down to it at once; no plan asks for more than a clause allows.
+fn lawful_now(request: &PlanRequest) -> f64 {
+    let window = request.lawful.holding(request.span.start());
+    let cap = window.and_then(|w| w.flow_max).map_or(f64::INFINITY, |c| c.max.get());
+    request.flow_now.get().min(cap)
 }
