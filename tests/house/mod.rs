@@ -12,33 +12,39 @@ pub fn root() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).parent().expect("tests lie in the repository").into()
 }
 
-/// Every file below the source folders with one of these endings: (path from the root, text).
+/// Every source below the folders with one of these endings, data apart: (path from the root, text).
 pub fn sources(endings: &[&str]) -> Vec<(String, String)> {
-    let mut list = Vec::new();
-    for top in ["crates", "plugins", "tests", "deploy"] {
-        collect(&root().join(top), endings, &mut list);
-    }
-    for name in ["README.md", "DEVELOPERS.md", "Cargo.toml"] {
-        if endings.iter().any(|e| name.ends_with(e)) {
-            list.push((name.to_owned(), std::fs::read_to_string(root().join(name)).unwrap()));
-        }
-    }
-    list.sort();
+    let ends = |path: &str| endings.iter().any(|e| path.ends_with(e)) && !path.contains("/data/");
+    let list: Vec<_> = texts().into_iter().filter(|(p, _)| ends(p)).collect();
     assert!(list.len() > 10, "the scanner found next to nothing");
     list
 }
 
-fn collect(folder: &Path, endings: &[&str], list: &mut Vec<(String, String)>) {
+/// Every text file of the repository but the licence and the lock file, in order of its path.
+pub fn texts() -> Vec<(String, String)> {
+    let mut list = Vec::new();
+    for top in ["crates", "plugins", "tests", "deploy", ".ci", ".config"] {
+        collect(&root().join(top), &mut list);
+    }
+    for name in ["README.md", "DEVELOPERS.md", "Cargo.toml", ".clippy.toml", ".rustfmt.toml"] {
+        list.push((name.to_owned(), std::fs::read_to_string(root().join(name)).unwrap()));
+    }
+    list.sort();
+    list
+}
+
+fn collect(folder: &Path, list: &mut Vec<(String, String)>) {
     for entry in std::fs::read_dir(folder).unwrap().map(Result::unwrap) {
         let path = entry.path();
         let name = entry.file_name().to_string_lossy().into_owned();
         if path.is_dir() {
-            if name != "target" && name != "state" && name != "data" {
-                collect(&path, endings, list);
+            // What a build or a run leaves behind is not ours to keep tidy.
+            if !["target", "state", "__pycache__"].contains(&name.as_str()) {
+                collect(&path, list);
             }
-        } else if endings.iter().any(|e| name.ends_with(e)) {
+        } else if let Ok(text) = std::fs::read_to_string(&path) {
             let from_root = path.strip_prefix(root()).unwrap().display().to_string();
-            list.push((from_root, std::fs::read_to_string(&path).unwrap()));
+            list.push((from_root, text));
         }
     }
 }
@@ -52,7 +58,26 @@ pub fn is_test(path: &str) -> bool {
         || path.contains("/examples/")
 }
 
-/// The text before its own test module.
-pub fn without_tests(text: &str) -> &str {
-    text.split("\n#[cfg(test)]").next().unwrap_or(text)
+/// The text without its `#[cfg(test)]` items, wherever they stand.
+pub fn without_tests(text: &str) -> String {
+    let mut kept = String::new();
+    let mut lines = text.lines();
+    while let Some(line) = lines.next() {
+        if line != "#[cfg(test)]" {
+            kept.push_str(line);
+            kept.push('\n');
+            continue;
+        }
+        // The item ends with a semicolon, or with a brace at the left edge.
+        let ends =
+            |l: &str| l == "}" || !l.starts_with(' ') && (l.ends_with(';') || l.ends_with("{}"));
+        let _ = lines.by_ref().find(|l| ends(l));
+    }
+    kept
+}
+
+#[test]
+fn only_test_items_are_left_out() {
+    let text = "//! A.\n#[cfg(test)]\nmod fixture;\nfn a() {\n}\n#[cfg(test)]\nmod tests {\n    use b;\n}\nfn c() {}\n";
+    assert_eq!(without_tests(text), "//! A.\nfn a() {\n}\nfn c() {}\n");
 }
