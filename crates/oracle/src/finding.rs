@@ -6,21 +6,66 @@ use units::{Span, Utc};
 
 #[derive(Clone, PartialEq, Debug)]
 pub enum Finding {
-    FlowOutsideWindow { from: Utc, to: Utc, volume_m3: f64 },
-    FlowOverCap { at: Utc, mean_m3_s: f64, max_m3_s: f64 },
-    RampOverCap { at: Utc, change_m3_s: f64, max_m3_s: f64 },
-    TideOverCap { tide: i64, volume_m3: f64, max_m3: f64 },
-    RollingOverCap { at: Utc, volume_m3: f64, max_m3: f64 },
-    FixedOverCap { from: Utc, volume_m3: f64, max_m3: f64 },
-    PastInterlock { at: Utc, asset: usize, why: String },
-    RestNotBegun { at: Utc, asset: usize, late: Span },
-    RestNotDone { at: Utc, asset: usize, late: Span },
-    AvoidableSpill { at: Utc, volume_m3: f64, unused: Utc },
+    /// The record or the rules cannot be judged by; nothing else was looked at.
+    Unjudgeable {
+        why: String,
+    },
+    FlowOutsideWindow {
+        from: Utc,
+        to: Utc,
+        volume_m3: f64,
+    },
+    FlowOverCap {
+        at: Utc,
+        mean_m3_s: f64,
+        max_m3_s: f64,
+    },
+    RampOverCap {
+        at: Utc,
+        change_m3_s: f64,
+        max_m3_s: f64,
+    },
+    TideOverCap {
+        tide: i64,
+        volume_m3: f64,
+        max_m3: f64,
+    },
+    RollingOverCap {
+        at: Utc,
+        volume_m3: f64,
+        max_m3: f64,
+    },
+    FixedOverCap {
+        from: Utc,
+        volume_m3: f64,
+        max_m3: f64,
+    },
+    PastInterlock {
+        at: Utc,
+        asset: usize,
+        why: String,
+    },
+    RestNotBegun {
+        at: Utc,
+        asset: usize,
+        late: Span,
+    },
+    RestNotDone {
+        at: Utc,
+        asset: usize,
+        late: Span,
+    },
+    AvoidableSpill {
+        at: Utc,
+        volume_m3: f64,
+        unused: Utc,
+    },
 }
 
 impl fmt::Display for Finding {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
+            Self::Unjudgeable { why } => write!(f, "cannot be judged: {why}"),
             Self::FlowOutsideWindow { from, to, volume_m3 } => {
                 write!(f, "{volume_m3:.2} m3 left outside a lawful window, {from} to {to}")
             }

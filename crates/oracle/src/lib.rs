@@ -10,7 +10,8 @@
 //!
 //! How fine it sees: the plant samples once a minute and keeps its totals exactly, so volumes at
 //! samples are exact and are taken as straight between them; flow at the ports begins and ends at
-//! the exact instant of its events.
+//! the exact instant of its events. A record that is empty, out of order or not a number breaks no
+//! rule by comparison, so it is refused as such and never passes.
 //!
 //! ```
 //! use oracle::{Line, lost};
@@ -29,6 +30,7 @@ mod foresight;
 mod judge;
 mod lost;
 mod rests;
+mod sound;
 mod spill;
 
 pub use finding::{Finding, Report, Totals};

@@ -1,4 +1,5 @@
-//! Leases and rests: begun no later than the lease's end, done within a stroke of it.
+//! Leases and rests: begun no later than the lease's end, done within a stroke of it. A jam of the
+//! gate is the one exception: the stroke's time then runs from its end.
 
 use units::{Mono, Span, Utc};
 
@@ -12,11 +13,11 @@ enum Now {
     Idle,
     /// Driven, until this instant of the boot clock.
     Leased(Mono),
-    /// Resting since; due to be done by; whether a jam stood meanwhile.
+    /// Resting since; due to be done by, unless a jam stands; whether one stood meanwhile.
     Resting {
         since: Mono,
-        due: Mono,
-        jammed: bool,
+        due: Option<Mono>,
+        behind_jam: bool,
     },
 }
 
@@ -33,11 +34,17 @@ pub(crate) fn rests(run: &Run, rules: &Rules, report: &mut Report) {
         match e.kind {
             EventKind::JamBegun => {
                 jammed = true;
-                if let Some(Now::Resting { jammed, .. }) = now.first_mut() {
-                    *jammed = true;
+                if let Some(Now::Resting { due, behind_jam, .. }) = now.first_mut() {
+                    (*due, *behind_jam) = (None, true);
                 }
             }
-            EventKind::JamEnded => jammed = false,
+            EventKind::JamEnded => {
+                jammed = false;
+                if let Some(Now::Resting { due: due @ None, .. }) = now.first_mut() {
+                    // It can move again, and has a stroke's time from here on.
+                    *due = Some(e.boot + rules.assets[0].stroke);
+                }
+            }
             EventKind::PlantStarted => now.fill(Now::Idle),
             EventKind::Driven { asset, lease_end, .. }
             | EventKind::Renewed { asset, lease_end } => {
@@ -78,7 +85,7 @@ fn overdue(asset: usize, state: &mut Now, (utc, boot): (Utc, Mono), report: &mut
             report.findings.push(Finding::RestNotBegun { at: utc - late, asset, late });
             *state = Now::Idle;
         }
-        Now::Resting { due, jammed: false, .. } if boot > due + TO_THE_TICK => {
+        Now::Resting { due: Some(due), .. } if boot > due + TO_THE_TICK => {
             let late = boot.since(due);
             report.findings.push(Finding::RestNotDone { at: utc - late, asset, late });
             *state = Now::Idle;
@@ -110,19 +117,21 @@ fn begun(
             report.findings.push(Finding::RestNotBegun { at: e.utc - late, asset, late });
         }
     }
-    let due = e.boot + rules.assets[asset].stroke;
-    *state = Now::Resting { since: e.boot, due, jammed };
+    let due = (!jammed).then(|| e.boot + rules.assets[asset].stroke);
+    *state = Now::Resting { since: e.boot, due, behind_jam: jammed };
 }
 
 fn done(asset: usize, state: &mut Now, e: &Event, report: &mut Report) {
-    let Now::Resting { since, due, jammed } = *state else { return };
+    let Now::Resting { since, due, behind_jam } = *state else { return };
     *state = Now::Idle;
-    if jammed {
+    if behind_jam {
         report.totals.rests_behind_jam += 1;
-        return;
+    } else {
+        report.totals.rest_done_latest = report.totals.rest_done_latest.max(e.boot.since(since));
     }
-    report.totals.rest_done_latest = report.totals.rest_done_latest.max(e.boot.since(since));
-    if e.boot > due + TO_THE_TICK {
+    if let Some(due) = due
+        && e.boot > due + TO_THE_TICK
+    {
         let late = e.boot.since(due);
         report.findings.push(Finding::RestNotDone { at: e.utc - late, asset, late });
     }

@@ -4,7 +4,7 @@ use units::{Span, Window};
 
 use super::judge;
 use crate::fixture::{boot, good_run, minute, plant, ramped, rules, run_with};
-use crate::{Barred, EventKind, Finding, Foresight, Line, Run, foresight, lost};
+use crate::{Barred, EventKind, Finding, Foresight, Line, Run, Sample, foresight, lost};
 
 fn findings(run: &Run) -> Vec<Finding> {
     judge(run, &rules()).findings
@@ -206,6 +206,65 @@ fn a_rest_that_takes_longer_than_the_stroke_is_found_but_for_a_jam() {
     plant(&mut run, minute(325), EventKind::JamEnded);
     let report = judge(&run, &rules());
     assert_eq!((report.findings, report.totals.rests_behind_jam), (Vec::new(), 1));
+}
+
+#[test]
+fn a_jam_that_is_over_excuses_no_longer_than_a_stroke() {
+    let mut run = good_run();
+    plant(&mut run, minute(320), EventKind::RestBegun { asset: 0 });
+    plant(&mut run, minute(322), EventKind::JamBegun);
+    assert_eq!(findings(&run), [], "while it stands nothing can move");
+    plant(&mut run, minute(340), EventKind::JamEnded);
+    let found = findings(&run);
+    let [Finding::RestNotDone { at, .. }] = found[..] else { panic!("never done: {found:?}") };
+    assert_eq!(at, minute(348));
+    plant(&mut run, minute(349), EventKind::RestDone { asset: 0 });
+    let report = judge(&run, &rules());
+    let [Finding::RestNotDone { late, .. }] = report.findings[..] else { panic!("{report}") };
+    assert_eq!((late, report.totals.rests_behind_jam), (Span::minutes(1), 1));
+    // A rest that begins behind a jam is excused alike.
+    let mut behind = good_run();
+    plant(&mut behind, minute(320), EventKind::JamBegun);
+    plant(&mut behind, minute(330), EventKind::RestBegun { asset: 0 });
+    plant(&mut behind, minute(340), EventKind::JamEnded);
+    plant(&mut behind, minute(348), EventKind::RestDone { asset: 0 });
+    assert_eq!(findings(&behind), []);
+}
+
+#[test]
+fn a_record_that_cannot_be_judged_never_passes() {
+    let refused = |why: &str, spoil: &dyn Fn(&mut Run)| {
+        let mut run = good_run();
+        spoil(&mut run);
+        let found = findings(&run);
+        assert!(!found.is_empty(), "{why}: passed");
+        let all =
+            found.iter().all(|f| matches!(f, Finding::Unjudgeable { why: w } if w.contains(why)));
+        assert!(all, "{why}: {found:?}");
+    };
+    refused("0 samples", &|run| *run = Run::default());
+    refused("1 samples", &|run| run.samples.truncate(1));
+    let spoils: [fn(&mut Sample) -> &mut f64; 7] = [
+        |s| &mut s.level_m,
+        |s| &mut s.outer_m,
+        |s| &mut s.gate_percent,
+        |s| &mut s.ports_m3_s,
+        |s| &mut s.inflow_m3_s,
+        |s| &mut s.released_m3,
+        |s| &mut s.spilled_m3,
+    ];
+    for of in spoils {
+        refused("no number", &|run| *of(&mut run.samples[500]) = f64::NAN);
+    }
+    refused("sample of 2027-05-01T00:01", &|run| run.samples.swap(1, 2));
+    refused("a total falls", &|run| run.samples[1440].released_m3 = 0.0);
+    refused("a total falls", &|run| run.samples[3].spilled_m3 = 1.0);
+    refused("the event of", &|run| run.events.reverse());
+    refused("an unknown asset", &|run| plant(run, minute(9), EventKind::RestTold { asset: 2 }));
+    let mut crossed = rules();
+    crossed.lawful.swap(0, 1);
+    let found = judge(&good_run(), &crossed).findings;
+    assert!(matches!(&found[..], [Finding::Unjudgeable { why }] if why.contains("cross")));
 }
 
 #[test]
