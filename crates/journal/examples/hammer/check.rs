@@ -1,0 +1,145 @@
+//! The files held to what was heard: opened as the daemon would, walked, and written to once more.
+
+use std::collections::{BTreeMap, BTreeSet};
+use std::path::Path;
+use std::sync::mpsc::channel;
+
+use engine::{Entry, Outcome};
+use journal::{FILE_NAME, Journal, JournalError, Reply, verify};
+use record::{Row, decode, kind};
+use rusqlite::Connection;
+
+use crate::heard::Heard;
+use crate::{load, site};
+
+/// What is good, in a line; the error says what is not.
+pub fn check(dir: &Path, acked: u64, heard: &Heard) -> Result<String, String> {
+    let acked = acked.max(heard.acked.keys().next_back().copied().unwrap_or(0));
+    untouched(dir, acked)?;
+    let found = opened(dir, heard)?;
+    if found.rows < acked {
+        return Err(format!("LOST-ROWS {} rows, {acked} were acknowledged", found.rows));
+    }
+    found.held_to(heard)?;
+    let integrity = integrity(dir)?;
+    if integrity != "ok" {
+        return Err(format!("INTEGRITY {integrity}"));
+    }
+    let verified = verify(dir, &mut |_, _| {}).map_err(|e| format!("VERIFY {}", said(&e)))?;
+    if verified.rows != found.rows + 1 {
+        return Err(format!("VERIFY {} rows after one was added", verified.rows));
+    }
+    Ok(format!("{} rows, {acked} acknowledged", found.rows))
+}
+
+fn said(e: &JournalError) -> String {
+    load::in_words(e)
+}
+
+/// A verification before anything is put right by an opening. A file that is not there or has no
+/// tables yet is as good as an empty one, as long as nothing was acknowledged.
+fn untouched(dir: &Path, acked: u64) -> Result<(), String> {
+    match verify(dir, &mut |_, _| {}) {
+        Ok(v) if v.rows >= acked => Ok(()),
+        Ok(v) => Err(format!("LOST-ROWS {} rows, {acked} were acknowledged", v.rows)),
+        Err(JournalError::Missing { .. } | JournalError::NotAJournal { .. }) if acked == 0 => {
+            Ok(())
+        }
+        Err(e) => Err(format!("VERIFY {}", said(&e))),
+    }
+}
+
+#[derive(Default)]
+struct Found {
+    rows: u64,
+    hashes: BTreeMap<u64, String>,
+    intents: BTreeMap<u64, u64>,
+    never_left: BTreeSet<u64>,
+    outcomes: BTreeSet<u64>,
+}
+
+/// Opens it as the daemon does, adds a row, and closes it.
+fn opened(dir: &Path, heard: &Heard) -> Result<Found, String> {
+    let mut found = Found::default();
+    let site = site::sallow();
+    let mut unread = None;
+    let visit = &mut |row: Row| {
+        if let Err(why) = found.take(&row, &site, heard) {
+            unread.get_or_insert(why);
+        }
+    };
+    let journal = Journal::open(dir, visit).map_err(|e| format!("OPEN {}", said(&e)))?;
+    if let Some(why) = unread {
+        return Err(format!("ROW {why}"));
+    }
+    found.rows = journal.rows();
+    let term = journal.next_term();
+    let (to, replies) = channel::<Reply>();
+    let handle = journal.start(to);
+    let batch = load::one_row(term);
+    handle.submit(batch).map_err(|e| format!("APPEND {}", said(&e)))?;
+    match replies.recv() {
+        Ok(Reply::Acked(a)) if a.rows.first().is_some_and(|r| r.seq == found.rows + 1) => {}
+        other => return Err(format!("APPEND {other:?}")),
+    }
+    handle.close().map_err(|e| format!("CLOSE {}", said(&e)))?;
+    Ok(found)
+}
+
+impl Found {
+    fn take(&mut self, row: &Row, site: &model::Site, heard: &Heard) -> Result<(), String> {
+        if heard.acked.contains_key(&row.seq) {
+            let line = load::ack(row.seq, &row.hash);
+            let hash = line.rsplit(' ').next().unwrap_or_default().to_owned();
+            self.hashes.insert(row.seq, hash);
+        }
+        if ![kind::INTENT, kind::OUTCOME].contains(&row.kind) {
+            return Ok(());
+        }
+        match decode(row, site).map_err(|e| format!("{}: {e}", row.seq))? {
+            Entry::Intent { command, .. } => {
+                self.intents.insert(command, row.seq);
+            }
+            Entry::Outcome { command, outcome, .. } => {
+                self.outcomes.insert(command);
+                if matches!(outcome, Outcome::Refused(_)) {
+                    self.never_left.insert(command);
+                }
+            }
+            _ => {}
+        }
+        Ok(())
+    }
+
+    fn held_to(&self, heard: &Heard) -> Result<(), String> {
+        for (seq, hash) in &heard.acked {
+            if self.hashes.get(seq) != Some(hash) {
+                let found = self.hashes.get(seq);
+                return Err(format!("OTHER-ROW {seq}: {hash} was acknowledged, {found:?} is there"));
+            }
+        }
+        for (command, seq) in &heard.commands {
+            if self.intents.get(command) != Some(seq) {
+                return Err(format!("PHANTOM command {command} has no intent in row {seq}"));
+            }
+            if self.never_left.contains(command) {
+                return Err(format!("PHANTOM command {command} left, and a row denies it"));
+            }
+        }
+        if heard.done {
+            let open = self.intents.keys().find(|c| {
+                !heard.commands.contains_key(c) && !self.outcomes.contains(c)
+            });
+            if let Some(command) = open {
+                return Err(format!("OPEN-INTENT {command} never left, and no row says so"));
+            }
+        }
+        Ok(())
+    }
+}
+
+fn integrity(dir: &Path) -> Result<String, String> {
+    let sql = |e: rusqlite::Error| format!("INTEGRITY {e}");
+    let db = Connection::open(dir.join(FILE_NAME)).map_err(sql)?;
+    db.query_row("PRAGMA integrity_check", [], |r| r.get(0)).map_err(sql)
+}
