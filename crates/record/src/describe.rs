@@ -4,20 +4,29 @@ use engine::{Act, ActKind, ClockTrust, Entry, Outcome};
 use interlock::Action;
 use model::{AssetId, RestAction};
 
-use crate::Row;
 use crate::decode::read;
 use crate::names::Gathered;
+use crate::note::{self, NOTES};
+use crate::{RecordError, Row, decode_note};
 
 /// What the row says, in one line. A row that this version cannot read is named as such.
 pub fn describe(row: &Row) -> String {
+    if NOTES.contains(&row.kind) {
+        return match decode_note(row) {
+            Ok(note) => note::line(&note).replace(['\n', '\r'], " "),
+            Err(e) => unreadable(row, &e),
+        };
+    }
     let mut names = Gathered::default();
     match read(row.kind, row.version, &row.body, &mut names) {
         Ok(entry) => line(&entry, row, &names).replace(['\n', '\r'], " "),
-        Err(e) => {
-            let kind = crate::kind::name(row.kind).unwrap_or("unknown kind");
-            format!("{kind} about {} cannot be read: {e}", row.subject)
-        }
+        Err(e) => unreadable(row, &e),
     }
+}
+
+fn unreadable(row: &Row, e: &RecordError) -> String {
+    let kind = crate::kind::name(row.kind).unwrap_or("unknown kind");
+    format!("{kind} about {} cannot be read: {e}", row.subject)
 }
 
 fn line(entry: &Entry, row: &Row, names: &Gathered) -> String {

@@ -32,6 +32,7 @@ use units::{CubicMetres, Span, Utc, Window};
 
 use crate::decode::read;
 use crate::names::{Gathered, Names};
+use crate::note::NOTES;
 use crate::{Row, kind};
 
 /// How long a released bucket matters: two of the longest calendar months.
@@ -88,7 +89,8 @@ impl Fold {
     pub fn push(&mut self, row: &Row) {
         self.carried.term = Some(Term(row.term));
         self.carried.last_seen = Some(row.utc);
-        // Most rows are decisions and confirmations of no consequence here; they are not read.
+        // Most rows are decisions and confirmations of no consequence here, and notes of the record
+        // itself; they are not read.
         if matches!(
             row.kind,
             kind::ARMED
@@ -99,7 +101,8 @@ impl Fold {
                 | kind::SPILL_FORECAST
                 | kind::ADAPTER_UP
                 | kind::ADAPTER_DOWN
-        ) {
+        ) || NOTES.contains(&row.kind)
+        {
             return;
         }
         match read(row.kind, row.version, &row.body, &mut self.names) {

@@ -20,8 +20,19 @@ pub const SPILL_FORECAST: u16 = 17;
 pub const ADAPTER_UP: u16 = 18;
 pub const ADAPTER_DOWN: u16 = 19;
 pub const STOPPING: u16 = 20;
+// From here on: what the record says of itself.
+pub const SEALED: u16 = 21;
+pub const SEGMENT_DELETED: u16 = 22;
+pub const SNAPSHOT: u16 = 23;
+pub const ANCHORED: u16 = 24;
+pub const BACKED_UP: u16 = 25;
+pub const LEGAL_HOLD: u16 = 26;
+pub const HOLD_LIFTED: u16 = 27;
+pub const MIGRATED: u16 = 28;
+pub const SUMMARY: u16 = 29;
+pub const JOURNAL_BACK: u16 = 30;
 
-const NAMES: [(u16, &str); 20] = [
+const NAMES: [(u16, &str); 30] = [
     (STARTED, "started"),
     (ACT, "act"),
     (MODE_CHANGED, "mode-changed"),
@@ -42,6 +53,16 @@ const NAMES: [(u16, &str); 20] = [
     (ADAPTER_UP, "adapter-up"),
     (ADAPTER_DOWN, "adapter-down"),
     (STOPPING, "stopping"),
+    (SEALED, "sealed"),
+    (SEGMENT_DELETED, "segment-deleted"),
+    (SNAPSHOT, "snapshot"),
+    (ANCHORED, "anchored"),
+    (BACKED_UP, "backed-up"),
+    (LEGAL_HOLD, "legal-hold"),
+    (HOLD_LIFTED, "hold-lifted"),
+    (MIGRATED, "migrated"),
+    (SUMMARY, "summary"),
+    (JOURNAL_BACK, "journal-back"),
 ];
 
 /// Every kind that this version writes.

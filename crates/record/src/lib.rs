@@ -31,6 +31,7 @@ mod error;
 mod fold;
 mod intent;
 mod names;
+mod note;
 mod reader;
 mod writer;
 
@@ -41,4 +42,5 @@ pub use error::RecordError;
 pub use fold::{Fold, RELEASED_KEPT, fold};
 pub use intent::Intent;
 pub use interlock::{Permit, Renewal};
+pub use note::{AnchorSignature, Note, Summary, decode_note, encode_note};
 pub use row::{Draft, Row, VERSION, canonical_bytes};

@@ -27,7 +27,7 @@ impl<'a> Reader<'a> {
             bytes => Err(RecordError::Long { bytes }),
         }
     }
-    fn bytes<const N: usize>(&mut self, field: &'static str) -> Read<[u8; N]> {
+    pub(crate) fn bytes<const N: usize>(&mut self, field: &'static str) -> Read<[u8; N]> {
         let (head, rest) =
             self.rest.split_first_chunk::<N>().ok_or(RecordError::Short { field })?;
         self.rest = rest;
@@ -35,6 +35,12 @@ impl<'a> Reader<'a> {
     }
     pub(crate) fn u8(&mut self, field: &'static str) -> Read<u8> {
         Ok(self.bytes::<1>(field)?[0])
+    }
+    pub(crate) fn u32(&mut self, field: &'static str) -> Read<u32> {
+        Ok(u32::from_le_bytes(self.bytes(field)?))
+    }
+    pub(crate) fn i32(&mut self, field: &'static str) -> Read<i32> {
+        Ok(i32::from_le_bytes(self.bytes(field)?))
     }
     pub(crate) fn u64(&mut self, field: &'static str) -> Read<u64> {
         Ok(u64::from_le_bytes(self.bytes(field)?))
@@ -57,11 +63,15 @@ impl<'a> Reader<'a> {
         // Every item takes a byte at least, so a longer list is not in this body.
         if n > self.rest.len() { Err(RecordError::Short { field }) } else { Ok(n) }
     }
-    fn borrowed(&mut self, field: &'static str) -> Read<&'a str> {
+    /// Bytes after their length.
+    pub(crate) fn blob(&mut self, field: &'static str) -> Read<&'a [u8]> {
         let n = self.count(field)?;
         let (head, rest) = self.rest.split_at(n);
         self.rest = rest;
-        core::str::from_utf8(head)
+        Ok(head)
+    }
+    fn borrowed(&mut self, field: &'static str) -> Read<&'a str> {
+        core::str::from_utf8(self.blob(field)?)
             .map_err(|e| RecordError::Bad { field, why: format!("not UTF-8: {e}") })
     }
     pub(crate) fn text(&mut self, field: &'static str) -> Read<String> {
