@@ -25,7 +25,8 @@ fn day(dir: &Path) -> u64 {
         let drafts: Vec<_> = chunk.iter().map(|(_, e)| record::encode(e, &site)).collect();
         rows += drafts.len() as u64;
         let (utc, boot) = (chunk[0].0.utc, chunk[0].0.boot);
-        handle.submit(Batch { term, utc, boot, drafts, intents: Vec::new() }).unwrap();
+        let (intents, seen) = (Vec::new(), journal::Seen::default());
+        handle.submit(Batch { term, utc, boot, drafts, intents, seen }).unwrap();
         assert!(matches!(replies.recv().unwrap(), Reply::Acked(_)));
     }
     handle.close().unwrap();
@@ -117,9 +118,9 @@ fn fault_a_row_taken_out_or_put_elsewhere_is_found() {
 fn fault_what_a_newer_program_wrote_is_refused_with_the_remedy() {
     let dir = tempfile::tempdir().unwrap();
     day(dir.path());
-    evidence(dir.path()).execute_batch("PRAGMA user_version = 2").unwrap();
+    evidence(dir.path()).execute_batch("PRAGMA user_version = 3").unwrap();
     let Err(error) = Journal::open(dir.path(), &mut |_| {}) else { panic!("it is accepted") };
-    assert!(matches!(error, JournalError::Newer { found: 2, known: 1, .. }), "{error}");
+    assert!(matches!(error, JournalError::Newer { found: 3, known: 2, .. }), "{error}");
 }
 
 #[test]

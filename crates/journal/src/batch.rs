@@ -3,7 +3,7 @@
 use record::{Draft, Intent, Row};
 use units::{Mono, Utc};
 
-use crate::Committed;
+use crate::{Committed, Done};
 
 /// What one step of the engine wants kept.
 #[derive(PartialEq, Debug)]
@@ -16,6 +16,43 @@ pub struct Batch {
     pub drafts: Vec<Draft>,
     /// Those whose draft is not among the above are written after them.
     pub intents: Vec<Intent>,
+    /// What was seen since the batch before: it is on disk no later than what followed from it.
+    pub seen: Seen,
+}
+
+/// What the engine was told, and what a minute's readings were. Kept apart from the chain until a
+/// day is sealed.
+#[derive(Clone, PartialEq, Eq, Debug, Default)]
+pub struct Seen {
+    /// Each in the bytes that `record` gives it.
+    pub events: Vec<Vec<u8>>,
+    pub minutes: Vec<Minute>,
+}
+
+impl Seen {
+    pub fn is_empty(&self) -> bool {
+        self.events.is_empty() && self.minutes.is_empty()
+    }
+}
+
+/// One reading of each signal for a minute, for people and plots: rounded to a step that is fine
+/// enough to show, and coarse enough to keep for ten years.
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub struct Minute {
+    /// Its beginning.
+    pub at: Utc,
+    /// In the order of the site file.
+    pub readings: Vec<MinuteReading>,
+}
+
+#[derive(Clone, PartialEq, Eq, Debug)]
+pub struct MinuteReading {
+    pub signal: String,
+    /// The value is `steps` x 10^`exponent` in the signal's unit; none where nothing was read.
+    pub steps: Option<i32>,
+    pub exponent: i8,
+    /// 0 good, 1 suspect, 2 bad, 3 stale, 4 never read.
+    pub quality: u8,
 }
 
 /// One batch is on disk.
@@ -34,5 +71,7 @@ pub enum Reply {
     /// gone; their other rows are kept in memory and will be written.
     Lost { why: String },
     /// What was kept in memory is on disk; its `Acked` follow, without permits.
-    Back,
+    Back { rows_kept: usize },
+    /// What became of a [`Task`].
+    Done(Done),
 }

@@ -2,6 +2,8 @@
 
 use std::path::PathBuf;
 
+use rusqlite::ErrorCode;
+
 #[derive(Debug, thiserror::Error)]
 pub enum JournalError {
     #[error(
@@ -33,10 +35,34 @@ pub enum JournalError {
     Io { path: PathBuf, doing: &'static str, source: std::io::Error },
     #[error("{}: the checkpoint copied {copied} of {of} pages", path.display())]
     Checkpoint { path: PathBuf, copied: i64, of: i64 },
+    #[error("{} is there already; give a state folder without a record", path.display())]
+    NotEmpty { path: PathBuf },
+    #[error("segment {}: {why}; put it back from a backup", path.display())]
+    Segment { path: PathBuf, why: String },
+    #[error("row {no} of the inputs that wait to be sealed does not read; keep the file")]
+    Inputs { no: i64 },
+    #[error("the anchor at row {seq} does not hold: {why}")]
+    Anchor { seq: u64, why: String },
     #[error("a permit does not agree with its row {seq} after the commit")]
     Permit { seq: u64, source: record::RecordError },
     #[error("{rows} rows could not be written before the end; they are in no file")]
     NotKept { rows: usize },
     #[error("the journal's thread is gone")]
     Gone,
+}
+
+impl JournalError {
+    /// Room on the disk would mend it.
+    pub(crate) fn is_full_disk(&self) -> bool {
+        match self {
+            Self::Sql { source, .. } => source.sqlite_error_code() == Some(ErrorCode::DiskFull),
+            Self::Io { source, .. } => source.kind() == std::io::ErrorKind::StorageFull,
+            _ => false,
+        }
+    }
+
+    /// Nothing that this connection says may be believed any more.
+    pub(crate) fn is_of_the_connection(&self) -> bool {
+        matches!(self, Self::Sql { .. } | Self::Held { .. } | Self::Checkpoint { .. })
+    }
 }

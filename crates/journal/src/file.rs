@@ -9,29 +9,12 @@ use rusqlite::types::Value;
 use rusqlite::{Connection, ErrorCode, OpenFlags};
 
 use crate::JournalError;
+use crate::forms::{self, FORM};
 
 /// The name of the evidence file in the state folder.
 pub const FILE_NAME: &str = "evidence.sqlite";
-/// The form of the file that this version writes, in SQLite's `user_version`.
-pub(crate) const FORM: i64 = 1;
 /// A holder that has just been killed may need a moment to be gone.
 const HELD_WAIT: Duration = Duration::from_millis(200);
-
-const SCHEMA: &str = "BEGIN IMMEDIATE;
-CREATE TABLE evidence (
-    seq INTEGER PRIMARY KEY,
-    term INTEGER NOT NULL,
-    utc_us INTEGER NOT NULL,
-    boot_ns INTEGER NOT NULL,
-    kind INTEGER NOT NULL,
-    version INTEGER NOT NULL,
-    subject TEXT NOT NULL,
-    cause TEXT NOT NULL,
-    body BLOB NOT NULL,
-    hash BLOB NOT NULL
-) STRICT;
-PRAGMA user_version = 1;
-COMMIT;";
 
 /// (setting, its value in SQL, what it must read back as). The locking mode comes before the
 /// journal mode: only then is the WAL's index in our memory and not in a mapped file, whose loss
@@ -51,6 +34,13 @@ const SETTINGS: [(&str, &str, &str); 6] = [
 pub(crate) struct Evidence {
     pub(crate) db: Connection,
     pub(crate) path: PathBuf,
+    /// The file itself, to copy it from. It may be closed only after the connection: closing any
+    /// handle of a file lets go of all of the process's locks on it (POSIX).
+    pub(crate) source: Option<File>,
+    /// Of the file as it is; the newest, unless it is open to be read only.
+    pub(crate) form: i64,
+    /// The form that it had when it was opened to write.
+    pub(crate) lifted_from: i64,
 }
 
 impl Evidence {
@@ -61,11 +51,9 @@ impl Evidence {
             | OpenFlags::SQLITE_OPEN_NO_MUTEX;
         let mut evidence = Self::connect(dir.join(FILE_NAME), flags)?;
         evidence.settle()?;
-        match evidence.form()? {
-            0 => evidence.create()?,
-            FORM => {}
-            found => return Err(evidence.newer(found)),
-        }
+        evidence.lift()?;
+        let source = File::open(&evidence.path);
+        evidence.source = Some(source.map_err(|e| evidence.io("opening it to copy it", e))?);
         // SQLite does not report a failed sync of the folder, so it is done once more by hand.
         File::open(dir)
             .and_then(|d| d.sync_all())
@@ -85,12 +73,36 @@ impl Evidence {
         evidence.set("query_only", "ON", "1")?;
         evidence.set("trusted_schema", "OFF", "0")?;
         evidence.set("mmap_size", "0", "0")?;
-        let kept = evidence.db.set_db_config(DbConfig::SQLITE_DBCONFIG_NO_CKPT_ON_CLOSE, true);
-        kept.map_err(|e| evidence.sql("keeping the WAL as it is", e))?;
-        match evidence.form()? {
-            FORM => Ok(evidence),
-            0 => Err(JournalError::NotAJournal { path: evidence.path }),
-            found => Err(evidence.newer(found)),
+        evidence.readable()
+    }
+
+    /// A copy that nobody writes to: nothing beside it is read or made.
+    pub(crate) fn open_copy(path: &Path) -> Result<Self, JournalError> {
+        if !path.exists() {
+            return Err(JournalError::Missing { path: path.to_owned() });
+        }
+        let escaped = path.display().to_string();
+        let escaped = escaped.replace('%', "%25").replace('?', "%3f").replace('#', "%23");
+        let uri = PathBuf::from(format!("file:{escaped}?immutable=1"));
+        let flags = OpenFlags::SQLITE_OPEN_READ_ONLY
+            | OpenFlags::SQLITE_OPEN_URI
+            | OpenFlags::SQLITE_OPEN_NO_MUTEX;
+        let mut copy = Self::connect(uri, flags)?;
+        copy.path = path.to_owned();
+        copy.set("trusted_schema", "OFF", "0")?;
+        copy.set("mmap_size", "0", "0")?;
+        copy.readable()
+    }
+
+    /// Refuses what is no journal, or of a newer form.
+    fn readable(mut self) -> Result<Self, JournalError> {
+        match self.user_version()? {
+            0 => Err(JournalError::NotAJournal { path: self.path }),
+            found if (1..=FORM).contains(&found) => {
+                self.form = found;
+                Ok(self)
+            }
+            found => Err(self.newer(found)),
         }
     }
 
@@ -99,9 +111,11 @@ impl Evidence {
             Ok(db) => db,
             Err(source) => return Err(JournalError::Sql { path, doing: "opening", source }),
         };
-        let evidence = Self { db, path };
+        let evidence = Self { db, path, source: None, form: FORM, lifted_from: FORM };
         let waits = evidence.db.busy_timeout(HELD_WAIT);
         waits.map_err(|e| evidence.sql("setting how long to wait for it", e))?;
+        // A connection that failed is dropped; it must not copy its WAL into the file on the way out.
+        evidence.fold_in_at_close(false)?;
         Ok(evidence)
     }
 
@@ -143,20 +157,26 @@ impl Evidence {
         Err(JournalError::Setting { path, setting, wanted, found })
     }
 
-    fn form(&self) -> Result<i64, JournalError> {
+    fn user_version(&self) -> Result<i64, JournalError> {
         let form = self.db.pragma_query_value(None, "user_version", |row| row.get(0));
         form.map_err(|e| self.sql("reading its form", e))
     }
 
-    fn create(&mut self) -> Result<(), JournalError> {
+    /// Makes the tables, or takes an older form to the newest.
+    fn lift(&mut self) -> Result<(), JournalError> {
+        let form = self.user_version()?;
+        if !(0..=FORM).contains(&form) {
+            return Err(self.newer(form));
+        }
         let tables: i64 = self
             .db
             .query_row("SELECT count(*) FROM sqlite_schema", [], |row| row.get(0))
             .map_err(|e| self.sql("looking for tables", e))?;
-        if tables > 0 {
+        if form == 0 && tables > 0 {
             return Err(JournalError::NotAJournal { path: self.path.clone() });
         }
-        self.db.execute_batch(SCHEMA).map_err(|e| self.sql("making the table", e))
+        self.lifted_from = if form == 0 { FORM } else { form };
+        forms::lift(&self.db, form).map_err(|e| self.sql("lifting it to the newest form", e))
     }
 
     fn newer(&self, found: i64) -> JournalError {
@@ -173,7 +193,12 @@ impl Evidence {
         }
     }
 
-    fn io(&self, doing: &'static str, source: std::io::Error) -> JournalError {
+    /// The file itself, where it is open to write.
+    pub(crate) fn source(&self) -> Result<&File, JournalError> {
+        self.source.as_ref().ok_or_else(|| JournalError::Missing { path: self.path.clone() })
+    }
+
+    pub(crate) fn io(&self, doing: &'static str, source: std::io::Error) -> JournalError {
         JournalError::Io { path: self.path.clone(), doing, source }
     }
 
@@ -191,8 +216,15 @@ impl Evidence {
         Ok(())
     }
 
+    fn fold_in_at_close(&self, yes: bool) -> Result<(), JournalError> {
+        let set = self.db.set_db_config(DbConfig::SQLITE_DBCONFIG_NO_CKPT_ON_CLOSE, !yes);
+        set.map(drop).map_err(|e| self.sql("saying what becomes of its WAL", e))
+    }
+
+    /// After a checkpoint: the WAL goes with it.
     pub(crate) fn close(self) -> Result<(), JournalError> {
-        let Self { db, path } = self;
+        self.fold_in_at_close(true)?;
+        let Self { db, path, source: _until_here, .. } = self;
         db.close().map_err(|(_, source)| JournalError::Sql { path, doing: "closing", source })
     }
 }

@@ -7,37 +7,13 @@ use record::Row;
 use rusqlite::params;
 use units::Utc;
 
-use crate::JournalError;
 use crate::chain;
 use crate::file::Evidence;
-
-/// What a whole verification found.
-#[derive(Clone, PartialEq, Eq, Debug)]
-pub struct Verified {
-    pub rows: u64,
-    /// The hash of the last row. Two copies of one record have the same; a copy that ends earlier
-    /// verifies too, so compare this with one that was kept elsewhere.
-    pub head_hex: String,
-}
-
-/// Verifies the chain from the first row to the last. `progress` is told (rows done, rows in all)
-/// every thousand rows and at the end. The error [`JournalError::FirstBad`] names the first row that
-/// is wrong.
-pub fn verify(dir: &Path, progress: &mut dyn FnMut(u64, u64)) -> Result<Verified, JournalError> {
-    let evidence = Evidence::open_to_read(dir)?;
-    // A damaged file may not even count; the walk then says which row is the first.
-    let last: Option<i64> =
-        evidence.db.query_row("SELECT max(seq) FROM evidence", [], |r| r.get(0)).unwrap_or(None);
-    let total = last.map_or(0, i64::cast_unsigned);
-    let head = chain::walk(&evidence, &mut |row| {
-        if row.seq % 1000 == 0 {
-            progress(row.seq, total);
-        }
-    })?;
-    progress(head.seq, total.max(head.seq));
-    let head_hex = blake3::Hash::from_bytes(head.hash).to_hex().to_string();
-    Ok(Verified { rows: head.seq, head_hex })
-}
+use crate::packs::Place;
+use crate::seal::SEGMENTS;
+use crate::segment::{Segment, take_minutes};
+use crate::varint::Taker;
+use crate::{JournalError, Minute, forms};
 
 /// Which rows are wanted; the default is all.
 #[derive(Clone, PartialEq, Eq, Debug, Default)]
@@ -54,14 +30,49 @@ pub struct Filter {
     pub limit: Option<u64>,
 }
 
+impl Filter {
+    fn fits(&self, row: &Row) -> bool {
+        row.seq >= self.from_seq
+            && self.from.is_none_or(|t| row.utc >= t)
+            && self.to.is_none_or(|t| row.utc < t)
+            && self.kind.is_none_or(|k| row.kind == k)
+            && self.subject.as_ref().is_none_or(|s| row.subject == *s)
+    }
+
+    /// Whether a pack may hold a row that fits.
+    fn touches(&self, place: &Place) -> bool {
+        self.from.is_none_or(|t| place.last_utc_us >= t.as_micros())
+            && self.to.is_none_or(|t| place.first_utc_us < t.as_micros())
+    }
+}
+
 /// Gives each row that passes the filter to `visit`, in order of sequence, until it breaks off. It
-/// does not verify the chain: [`verify`] does.
+/// does not verify the whole chain: [`verify`](crate::verify) does.
 pub fn each_row(
     dir: &Path,
     filter: &Filter,
     visit: &mut dyn FnMut(Row) -> ControlFlow<()>,
 ) -> Result<(), JournalError> {
     let evidence = Evidence::open_to_read(dir)?;
+    let mut left = filter.limit.unwrap_or(u64::MAX);
+    let places = evidence.packs(filter.from_seq).map_err(|e| evidence.sql("reading rows", e))?;
+    for place in places.iter().filter(|p| filter.touches(p)) {
+        for row in evidence.unpack(place)?.into_iter().filter(|r| filter.fits(r)) {
+            if left == 0 || visit(row).is_break() {
+                return Ok(());
+            }
+            left -= 1;
+        }
+    }
+    each_live_row(&evidence, filter, left, visit)
+}
+
+fn each_live_row(
+    evidence: &Evidence,
+    filter: &Filter,
+    left: u64,
+    visit: &mut dyn FnMut(Row) -> ControlFlow<()>,
+) -> Result<(), JournalError> {
     let sql = |e| evidence.sql("reading rows", e);
     let text = format!(
         "SELECT {} FROM evidence WHERE seq >= ?1 AND (?2 IS NULL OR utc_us >= ?2) AND \
@@ -70,7 +81,7 @@ pub fn each_row(
         chain::COLUMNS
     );
     let mut statement = evidence.db.prepare(&text).map_err(sql)?;
-    let limit = filter.limit.map_or(-1, |n| i64::try_from(n).unwrap_or(i64::MAX));
+    let limit = i64::try_from(left).unwrap_or(i64::MAX);
     let micros = |t: Option<Utc>| t.map(Utc::as_micros);
     let from_seq = i64::try_from(filter.from_seq).unwrap_or(i64::MAX);
     let (from, to, subject) = (micros(filter.from), micros(filter.to), filter.subject.as_deref());
@@ -92,4 +103,74 @@ pub fn rows(dir: &Path, filter: &Filter) -> Result<Vec<Row>, JournalError> {
         ControlFlow::Continue(())
     })?;
     Ok(all)
+}
+
+/// Gives every event that the engine was told, in order, to `visit`: from the sealed segments that
+/// are still there, then from what waits to be sealed.
+pub fn events(dir: &Path, visit: &mut dyn FnMut(&[u8])) -> Result<(), JournalError> {
+    each_segment(dir, &mut |segment| segment.events(visit))?;
+    each_unsealed(dir, &mut |events, _| {
+        let mut taker = Taker(events);
+        while let Some(event) = taker.blob() {
+            visit(event);
+        }
+        Some(())
+    })
+}
+
+/// The minute readings, likewise.
+pub fn minutes(dir: &Path, visit: &mut dyn FnMut(Minute)) -> Result<(), JournalError> {
+    each_segment(dir, &mut |segment| {
+        segment.minutes()?.into_iter().for_each(&mut *visit);
+        Some(())
+    })?;
+    each_unsealed(dir, &mut |_, minutes| {
+        take_minutes(minutes)?.into_iter().for_each(&mut *visit);
+        Some(())
+    })
+}
+
+fn each_segment(
+    dir: &Path,
+    visit: &mut dyn FnMut(&Segment<'_>) -> Option<()>,
+) -> Result<(), JournalError> {
+    let evidence = Evidence::open_to_read(dir)?;
+    if evidence.form < forms::WITH_PACKS {
+        return Ok(());
+    }
+    let sql = |e| evidence.sql("reading where the segments are", e);
+    let text = "SELECT file FROM segments WHERE deleted_seq IS NULL ORDER BY sealed_seq";
+    let mut statement = evidence.db.prepare(text).map_err(sql)?;
+    let files: Vec<String> =
+        statement.query_map([], |r| r.get(0)).and_then(Iterator::collect).map_err(sql)?;
+    for file in files {
+        let path = dir.join(SEGMENTS).join(file);
+        let wrong = |why: String| JournalError::Segment { path: path.clone(), why };
+        let bytes = std::fs::read(&path).map_err(|e| wrong(e.to_string()))?;
+        let read = Segment::new(&bytes).and_then(|s| visit(&s));
+        read.ok_or_else(|| wrong("it does not read".to_owned()))?;
+    }
+    Ok(())
+}
+
+fn each_unsealed(
+    dir: &Path,
+    visit: &mut dyn FnMut(&[u8], &[u8]) -> Option<()>,
+) -> Result<(), JournalError> {
+    let evidence = Evidence::open_to_read(dir)?;
+    if evidence.form < forms::WITH_PACKS {
+        return Ok(());
+    }
+    let sql = |e| evidence.sql("reading inputs", e);
+    let text = "SELECT no, events, minutes FROM inputs ORDER BY no";
+    let mut statement = evidence.db.prepare(text).map_err(sql)?;
+    let mut rows = statement.query([]).map_err(sql)?;
+    while let Some(row) = rows.next().map_err(sql)? {
+        let blob = |c: usize| row.get_ref(c).and_then(|v| Ok(v.as_blob()?)).map_err(sql);
+        if visit(blob(1)?, blob(2)?).is_none() {
+            let no: i64 = row.get(0).map_err(sql)?;
+            return Err(JournalError::Inputs { no });
+        }
+    }
+    Ok(())
 }

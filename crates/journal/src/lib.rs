@@ -21,7 +21,8 @@
 //! let (subject, cause, body) = ("site".to_owned(), String::new(), vec![0; 4]);
 //! let drafts = vec![Draft { kind: kind::STOPPING, version: 1, subject, cause, body }];
 //! let (utc, boot) = (Utc::EPOCH, Mono::ZERO);
-//! handle.submit(Batch { term, utc, boot, drafts, intents: Vec::new() })?;
+//! let seen = journal::Seen::default();
+//! handle.submit(Batch { term, utc, boot, drafts, intents: Vec::new(), seen })?;
 //! let Reply::Acked(acked) = replies.recv()? else { return Err("lost".into()) };
 //! assert_eq!(acked.rows[0].seq, 1);
 //! handle.close()?;
@@ -33,18 +34,48 @@
 mod batch;
 mod chain;
 mod committed;
-mod error;
-mod file;
-mod inspect;
-mod journal;
-mod lost;
-mod planned;
 mod thread;
 
-pub use batch::{Acked, Batch, Reply};
+mod journal;
+mod opening;
+mod planned;
+
+mod task;
+
+mod anchor;
+mod backup;
+mod retain;
+mod seal;
+
+mod file;
+mod forms;
+mod rows;
+
+mod pack;
+mod packs;
+mod segment;
+mod varint;
+
+mod lost;
+mod reserve;
+
+mod inspect;
+mod salvage;
+mod verify;
+
+mod durable;
+mod error;
+
+pub use anchor::{Anchor, is_signed, public_key};
+pub use backup::restore;
+pub use batch::{Acked, Batch, Minute, MinuteReading, Reply, Seen};
 pub use committed::Committed;
 pub use error::JournalError;
 pub use file::FILE_NAME;
-pub use inspect::{Filter, Verified, each_row, rows, verify};
+pub use inspect::{Filter, each_row, events, minutes, rows};
 pub use journal::Journal;
+pub use opening::Opening;
+pub use salvage::{Salvaged, salvage};
+pub use task::{Done, Stamp, Task};
 pub use thread::Handle;
+pub use verify::{Checks, Verified, verify, verify_with};

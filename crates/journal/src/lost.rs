@@ -10,9 +10,9 @@ use std::time::Duration;
 use record::Row;
 
 use crate::chain::Head;
-use crate::planned::Planned;
+use crate::planned::{Planned, Whose};
 use crate::thread::Message;
-use crate::{Journal, JournalError};
+use crate::{Journal, JournalError, Opening};
 
 /// Time between two attempts. A person who frees a full disk waits no longer than this.
 const RETRY_EVERY: Duration = Duration::from_secs(2);
@@ -24,10 +24,11 @@ pub(crate) struct Kept {
     dir: PathBuf,
     /// Where the chain ended when the last acknowledgement was given.
     acknowledged: Head,
+    acknowledged_input: i64,
     /// The one transaction that failed: on disk as a whole, or not at all.
     attempted: Vec<Planned>,
     /// Found on disk after all, to be acknowledged.
-    found: Vec<(bool, Vec<Row>)>,
+    found: Vec<(Whose, Vec<Row>)>,
     since: Vec<Planned>,
     rows: usize,
     /// Ends with the loss.
@@ -35,11 +36,17 @@ pub(crate) struct Kept {
 }
 
 impl Kept {
-    pub(crate) fn after(journal: &Journal, attempted: Vec<Planned>, ticker: Ticker) -> Self {
+    pub(crate) fn after(
+        journal: &mut Journal,
+        mut attempted: Vec<Planned>,
+        ticker: Ticker,
+    ) -> Self {
+        attempted.extend(journal.attempting());
         Self {
             dir: journal.dir().to_owned(),
             acknowledged: journal.head(),
-            rows: attempted.iter().map(|p| p.drafts.len()).sum(),
+            acknowledged_input: journal.last_input(),
+            rows: attempted.iter().map(Planned::weight).sum(),
             attempted,
             found: Vec::new(),
             since: Vec::new(),
@@ -49,7 +56,7 @@ impl Kept {
 
     /// Keeps more; their permits are gone already. The error says what found no room.
     pub(crate) fn add(&mut self, planned: Vec<Planned>) -> Result<(), String> {
-        let more: usize = planned.iter().map(|p| p.drafts.len()).sum();
+        let more: usize = planned.iter().map(Planned::weight).sum();
         if self.rows + more > KEPT_ROWS_MOST {
             return Err(format!(
                 "the journal is still lost, and {more} rows find no room in memory: they will not \
@@ -64,26 +71,19 @@ impl Kept {
     /// Opens and verifies the file anew, finds out what became of the transaction that failed, and
     /// writes the rest. Gives the rows of each batch, in order. On an error everything is kept.
     pub(crate) fn recover(&mut self) -> Result<(Journal, Vec<Vec<Row>>), JournalError> {
-        let (from, mut at, mut tail) = (self.acknowledged.seq, None, Vec::new());
-        let mut journal = Journal::open(&self.dir, &mut |row| {
-            if row.seq == from {
-                at = Some(row.hash);
-            } else if row.seq > from {
-                tail.push(row);
-            }
-        })?;
-        if from > 0 && at != Some(self.acknowledged.hash) {
-            let why = "it was acknowledged, and is gone or another".to_owned();
-            return Err(JournalError::FirstBad { seq: from, why });
-        }
-        self.settle_attempted(tail)?;
+        let mut tail = Vec::new();
+        let opening = Opening::begin(&self.dir)?;
+        let mut journal = opening.walk_after(self.acknowledged, &mut |row| tail.push(row))?;
+        let written = !tail.is_empty() || journal.last_input() > self.acknowledged_input;
+        self.settle_attempted(tail, written)?;
         self.acknowledged = journal.head();
+        self.acknowledged_input = journal.last_input();
         let mut group = std::mem::take(&mut self.since);
         group.iter_mut().for_each(Planned::without_intents);
-        match journal.write(&group) {
-            Ok((rows, head)) => {
-                journal.advance(head);
-                let new = group.iter().map(|p| p.follows).zip(rows);
+        match journal.write(&group, &mut |_| Ok(())) {
+            Ok((rows, end)) => {
+                journal.advance(end);
+                let new = group.iter().map(|p| p.whose).zip(rows);
                 Ok((journal, merged(self.found.drain(..).chain(new))))
             }
             Err(e) => {
@@ -93,11 +93,13 @@ impl Kept {
         }
     }
 
-    /// `tail` are the rows on disk that nobody was told of.
-    fn settle_attempted(&mut self, tail: Vec<Row>) -> Result<(), JournalError> {
+    /// `tail` are the rows on disk that nobody was told of; a transaction may also have been written
+    /// that had none.
+    fn settle_attempted(&mut self, tail: Vec<Row>, written: bool) -> Result<(), JournalError> {
         let wanted: usize = self.attempted.iter().map(|p| p.drafts.len()).sum();
-        if tail.is_empty() {
-            self.since.splice(0..0, self.attempted.drain(..));
+        if !written {
+            let again = self.attempted.drain(..).filter(|p| p.whose != Whose::Task);
+            self.since.splice(0..0, again);
             return Ok(());
         }
         let planned = self.attempted.iter().flat_map(|p| p.drafts.iter().map(move |d| p.row(d)));
@@ -111,7 +113,7 @@ impl Kept {
         let mut never_left = Vec::new();
         for planned in self.attempted.drain(..) {
             let rows = tail.by_ref().take(planned.drafts.len()).collect();
-            self.found.push((planned.follows, rows));
+            self.found.push((planned.whose, rows));
             never_left.extend(planned.never_left());
         }
         self.since.splice(0..0, never_left);
@@ -124,12 +126,13 @@ impl Kept {
     }
 }
 
-/// The rows of each batch; what follows a batch goes with it.
-fn merged(parts: impl Iterator<Item = (bool, Vec<Row>)>) -> Vec<Vec<Row>> {
+/// The rows of each batch; what follows a batch goes with it, and for a task nobody waits.
+fn merged(parts: impl Iterator<Item = (Whose, Vec<Row>)>) -> Vec<Vec<Row>> {
     let mut all: Vec<Vec<Row>> = Vec::new();
-    for (follows, rows) in parts {
-        match all.last_mut() {
-            Some(last) if follows => last.extend(rows),
+    for (whose, rows) in parts {
+        match (whose, all.last_mut()) {
+            (Whose::Task, _) => {}
+            (Whose::Before, Some(last)) => last.extend(rows),
             _ => all.push(rows),
         }
     }

@@ -3,8 +3,8 @@
 use record::{Draft, Intent, Row};
 use units::{Mono, Utc};
 
-use crate::Batch;
 use crate::chain::GENESIS;
+use crate::{Batch, Seen, Stamp};
 
 /// A batch with every row in its place; the permits are elsewhere.
 #[derive(Clone, Debug)]
@@ -15,14 +15,26 @@ pub(crate) struct Planned {
     pub(crate) drafts: Vec<Draft>,
     /// For each intent the place of its row, and the row to be written if it never left.
     intents: Vec<(usize, Draft)>,
-    /// Not a batch of its own but what follows from the one before.
-    pub(crate) follows: bool,
+    pub(crate) seen: Seen,
+    /// Who waits for it.
+    pub(crate) whose: Whose,
+}
+
+/// Whose rows these are, and so whom they are answered to.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(crate) enum Whose {
+    /// A batch that was handed over.
+    Batch,
+    /// What follows from the batch before, and is answered with it.
+    Before,
+    /// A task's of ours: done again when it is due, so that nobody waits.
+    Task,
 }
 
 impl Planned {
     /// Rows in order, and each intent with the place of its row.
     pub(crate) fn of(batch: Batch) -> (Self, Vec<(usize, Intent)>) {
-        let Batch { term, utc, boot, mut drafts, intents } = batch;
+        let Batch { term, utc, boot, mut drafts, intents, seen } = batch;
         let mut placed: Vec<(usize, Intent)> = Vec::with_capacity(intents.len());
         for intent in intents {
             let free = |no: &usize| placed.iter().all(|(taken, _)| taken != no);
@@ -34,7 +46,23 @@ impl Planned {
             placed.push((place, intent));
         }
         let intents = placed.iter().map(|(no, i)| (*no, i.never_left().clone())).collect();
-        (Self { term, utc, boot, drafts, intents, follows: false }, placed)
+        (Self { term, utc, boot, drafts, intents, seen, whose: Whose::Batch }, placed)
+    }
+
+    /// Rows of our own.
+    pub(crate) fn task(stamp: &Stamp, drafts: Vec<Draft>) -> Self {
+        let &Stamp { term, utc, boot } = stamp;
+        let (intents, seen, whose) = (Vec::new(), Seen::default(), Whose::Task);
+        Self { term, utc, boot, drafts, intents, seen, whose }
+    }
+
+    /// What it takes of the room in memory: its rows, or one for what was seen.
+    pub(crate) fn weight(&self) -> usize {
+        self.drafts.len().max(1)
+    }
+
+    pub(crate) fn utc(&self) -> Utc {
+        self.utc
     }
 
     pub(crate) fn row(&self, draft: &Draft) -> Row {
@@ -58,6 +86,7 @@ impl Planned {
         if drafts.is_empty() {
             return None;
         }
-        Some(Self { drafts, intents: Vec::new(), follows: true, ..self })
+        let (seen, whose) = (Seen::default(), Whose::Before);
+        Some(Self { drafts, intents: Vec::new(), seen, whose, ..self })
     }
 }

@@ -9,7 +9,7 @@ use std::time::Duration;
 use anyhow::Result;
 use engine::{Carried, ClockTrust, Effects, Event, Job, Severity, Stamp, State, step};
 use host::{Host, HostEvent, RestPoint};
-use journal::{Batch, Handle, Reply};
+use journal::{Batch, Handle, Reply, Seen};
 use model::{AssetId, RestAction, Site, Term};
 use protocol::RestCause;
 use record::Intent;
@@ -186,7 +186,8 @@ impl Shell {
                 Ok(())
             }
             Reply::Lost { why } => self.feed(Event::JournalLost { why }),
-            Reply::Back => self.feed(Event::JournalBack),
+            Reply::Back { .. } => self.feed(Event::JournalBack),
+            Reply::Done(_) => Ok(()),
         }
     }
 
@@ -259,7 +260,8 @@ impl Shell {
         let drafts = self.effects.records.drain(..).map(|e| record::encode(&e, site)).collect();
         let intents = self.effects.orders.drain(..).map(|o| Intent::new(o.permit, site)).collect();
         let (utc, boot) = (stamp.utc, stamp.boot);
-        self.parts.journal.submit(Batch { term: stamp.term.0, utc, boot, drafts, intents })?;
+        let (term, seen) = (stamp.term.0, Seen::default());
+        self.parts.journal.submit(Batch { term, utc, boot, drafts, intents, seen })?;
         self.waiting.push_back(waits);
         Ok(())
     }
