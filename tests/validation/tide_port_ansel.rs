@@ -106,6 +106,7 @@ fn ansel() -> Site {
             opening_step_min: Percent::new(1.0).unwrap(),
             heartbeat_file: None,
         },
+        keeping: model::Keeping::default(),
         simulation: None,
         site_digest: "a site built in a test".to_owned(),
         licence_digest: String::new(),

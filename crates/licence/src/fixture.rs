@@ -156,6 +156,7 @@ pub fn site(clauses: Vec<Clause>) -> Site {
             opening_step_min: Percent::of(1.0),
             heartbeat_file: None,
         },
+        keeping: model::Keeping::default(),
         simulation: None,
         site_digest: String::new(),
         licence_digest: String::new(),

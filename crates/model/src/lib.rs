@@ -9,6 +9,7 @@
 mod clause;
 mod forecast;
 mod ids;
+mod keeping;
 mod outlet;
 mod plan;
 mod reading;
@@ -19,6 +20,7 @@ mod windows;
 pub use clause::*;
 pub use forecast::*;
 pub use ids::*;
+pub use keeping::*;
 pub use outlet::*;
 pub use plan::*;
 pub use reading::*;

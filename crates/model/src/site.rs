@@ -5,7 +5,7 @@ use units::{
     ZoneRules,
 };
 
-use crate::{AdapterId, Asset, AssetId, Licence, Outlet, PlaceId, SignalId, StorageId};
+use crate::{AdapterId, Asset, AssetId, Keeping, Licence, Outlet, PlaceId, SignalId, StorageId};
 
 /// One site, whole and checked.
 #[derive(Clone, PartialEq, Debug)]
@@ -24,6 +24,7 @@ pub struct Site {
     pub adapters: Vec<Adapter>,
     pub licence: Licence,
     pub settings: Settings,
+    pub keeping: Keeping,
     /// Present when the plant is simulated; then the clock may run faster.
     pub simulation: Option<Simulation>,
     /// BLAKE3 of the site file and of the licence file, hex.

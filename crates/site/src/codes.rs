@@ -46,6 +46,7 @@ pub(crate) const POINT_TWICE: Code = Code("S035");
 pub(crate) const NEAP_SPRING: Code = Code("S036");
 pub(crate) const SITE_DATUM: Code = Code("S037");
 pub(crate) const EMPTY: Code = Code("S038");
+pub(crate) const SCHEDULE: Code = Code("S039");
 
 pub(crate) const CLAUSE_TWICE: Code = Code("L001");
 pub(crate) const GOVERNS: Code = Code("L002");
@@ -99,7 +100,7 @@ mod tests {
             assert!(e.text.len() > 80, "{} is too short to help", e.code);
         }
         let count = |letter: char| all.iter().filter(|e| e.code.starts_with(letter)).count();
-        assert_eq!((count('S'), count('L'), count('N')), (38, 11, 5));
+        assert_eq!((count('S'), count('L'), count('N')), (39, 11, 5));
         assert_eq!(explain(" s012 ").map(|e| e.code), Some("S012"));
         assert_eq!(explain("S999"), None);
     }

@@ -7,6 +7,7 @@ use crate::assets::assets;
 use crate::clauses::{Known, licence};
 use crate::codes;
 use crate::cross;
+use crate::keeping::keeping;
 use crate::names::proper_name;
 use crate::places::places;
 use crate::port::port;
@@ -52,6 +53,7 @@ pub(crate) fn site(root: &Table<'_>, law: Option<&Table<'_>>, digests: Digests) 
     let outlets = outlets(&mut outlet_tables, &known, &datums, &signals);
     let port = port(root, &datums, &signals);
     let settings = settings(root);
+    let keeping = keeping(root, zone.as_ref());
     let simulation = simulation(root, &datums, &signals, &asset_names);
     root.finish();
     let known = Known {
@@ -77,6 +79,7 @@ pub(crate) fn site(root: &Table<'_>, law: Option<&Table<'_>>, digests: Digests) 
         // Without a sound licence the site is refused, but its parts can still be held together.
         licence: licence.clone().unwrap_or_else(no_licence),
         settings: settings?,
+        keeping: keeping?,
         simulation: simulation?,
         site_digest: digests.site,
         licence_digest: digests.licence,

@@ -240,6 +240,13 @@ pub(crate) const TABLE: &[(Code, &str, &str)] = &[
       to run under.",
     ),
     (
+        SCHEDULE,
+        "a duty whose time cannot be read",
+        "A duty recurs by a cron expression of six fields in the site's own time: second, minute, \
+      hour, day of month, month, day of week (by name). A time that spring's change of the clock \
+      leaves out comes at the change; one that autumn has twice comes once, unless autumn = \"both\".",
+    ),
+    (
         CLAUSE_TWICE,
         "a clause number that is used twice",
         "Every window edge, hold and return names its clause by the regulator's number. Two clauses \

@@ -198,6 +198,7 @@ pub fn site() -> Site {
         adapters: Vec::new(),
         licence: Licence { reference: String::new(), title: String::new(), clauses: permit() },
         settings: settings(),
+        keeping: model::Keeping::default(),
         simulation: None,
         site_digest: String::new(),
         licence_digest: String::new(),
