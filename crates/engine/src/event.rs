@@ -50,6 +50,8 @@ pub enum Event {
     Stopping {
         why: String,
     },
+    /// New plans are wanted: a duty that recurs.
+    Replan,
     Wake,
 }
 

@@ -48,6 +48,7 @@ pub fn step(state: &mut State, stamp: &Stamp, event: Event, effects: &mut Effect
             effects.records.push(Entry::Stopping { why });
             return;
         }
+        Event::Replan => state.want_plan(),
         Event::Wake => {}
     }
     review(state, stamp, effects);

@@ -26,6 +26,7 @@ const PART: &str = "part";
 
 pub(crate) struct Backing {
     to: PathBuf,
+    keep: u32,
     state: State,
 }
 
@@ -45,8 +46,8 @@ struct Copying {
 }
 
 impl Backing {
-    pub(crate) fn new(to: PathBuf) -> Self {
-        Self { to, state: State::Begin }
+    pub(crate) fn new(to: PathBuf, keep: u32) -> Self {
+        Self { to, keep, state: State::Begin }
     }
 
     pub(crate) fn slice(&mut self, desk: &mut Desk<'_>) -> Result<Slice, JournalError> {
@@ -70,6 +71,8 @@ impl Backing {
                     let words = format!("{} rows in {}", of_seq, self.to.join(&name).display());
                     let note = Note::BackedUp { file: name, of_seq, hash, bytes };
                     desk.keep(&[note], &mut |_| Ok(()))?;
+                    let pruned = prune(&self.to, self.keep);
+                    pruned.map_err(|e| self.failed("removing old backups", e))?;
                     return Ok(Slice::Done(words));
                 }
                 Ok(Err(why)) => {
@@ -164,6 +167,26 @@ fn copy_segments(from: &Path, to: &Path) -> io::Result<()> {
         fs::copy(entry.path(), &copy)?;
         File::open(&copy)?.sync_all()?;
         durable::rename(&copy, &target)?;
+    }
+    Ok(())
+}
+
+/// Removes the oldest copies beyond `keep`, and what an earlier run left half done.
+fn prune(to: &Path, keep: u32) -> io::Result<()> {
+    let mut copies: Vec<(u64, PathBuf)> = Vec::new();
+    for entry in fs::read_dir(to)? {
+        let path = entry?.path();
+        let name = path.file_name().and_then(|n| n.to_str()).unwrap_or_default();
+        let Some(rest) = name.strip_prefix("evidence-") else { continue };
+        if rest.ends_with(PART) {
+            fs::remove_file(&path)?;
+        } else if let Some(Ok(seq)) = rest.strip_suffix(".sqlite").map(str::parse) {
+            copies.push((seq, path));
+        }
+    }
+    copies.sort_unstable_by(|a, b| b.cmp(a));
+    for (_, path) in copies.into_iter().skip(keep.max(1) as usize) {
+        fs::remove_file(path)?;
     }
     Ok(())
 }

@@ -12,7 +12,7 @@ use crate::{Acked, Committed, JournalError, Opening, segment};
 
 /// Work between two checkpoints: a row, and a commit, count as one each. About two megabytes of WAL.
 const CHECKPOINT_AFTER: u64 = 1000;
-const DAY_US: i64 = 86_400_000_000;
+pub(crate) const DAY_US: i64 = 86_400_000_000;
 
 /// An open, verified evidence file, ready to take rows.
 #[derive(Debug)]
@@ -22,8 +22,6 @@ pub struct Journal {
     dir: PathBuf,
     /// The number of the last row of inputs that was ever written.
     last_input: i64,
-    /// Where the walk at the opening began: all before it is still to be verified.
-    from: Head,
     since_checkpoint: u64,
     /// The file must stay as it is: it is being copied, and new rows wait in the WAL.
     pub(crate) frozen: bool,
@@ -58,7 +56,7 @@ impl Journal {
         let head = Walk::after(from).finish(&evidence, visit)?;
         let (since_checkpoint, frozen, attempting) = (0, false, None);
         let last_input = evidence.last_input()?;
-        Ok(Self { evidence, head, dir, last_input, from, since_checkpoint, frozen, attempting })
+        Ok(Self { evidence, head, dir, last_input, since_checkpoint, frozen, attempting })
     }
 
     /// The term of the life that now begins: one more than the last row's.
@@ -92,10 +90,6 @@ impl Journal {
 
     pub(crate) fn last_input(&self) -> i64 {
         self.last_input
-    }
-
-    pub(crate) fn from(&self) -> Head {
-        self.from
     }
 
     /// Commits all the batches as one transaction, reads each intent's row back and compares it

@@ -6,6 +6,7 @@ use rusqlite::params;
 use crate::JournalError;
 use crate::chain::{self, COLUMNS};
 use crate::file::Evidence;
+use crate::journal::DAY_US;
 
 impl Evidence {
     /// At most `limit` rows from `from_seq` on that are not packed.
@@ -33,6 +34,32 @@ impl Evidence {
         let text = "SELECT coalesce(max(seq), 0) FROM sqlite_sequence WHERE name = 'inputs'";
         let last = self.db.query_row(text, [], |r| r.get(0));
         last.map_err(|e| self.sql("reading the number of the last inputs", e))
+    }
+
+    /// Every row of a day, by its UTC, in order of sequence.
+    pub(crate) fn each_of_day(
+        &self,
+        day: i32,
+        visit: &mut dyn FnMut(&Row),
+    ) -> Result<(), JournalError> {
+        let sql = |e| self.sql("reading the rows of a day", e);
+        let from = i64::from(day) * DAY_US;
+        let within = from..from + DAY_US;
+        for place in self.packs(0).map_err(sql)? {
+            if place.first_utc_us < within.end && place.last_utc_us >= within.start {
+                let rows = self.unpack(&place)?;
+                rows.iter().filter(|r| within.contains(&r.utc.as_micros())).for_each(&mut *visit);
+            }
+        }
+        let text = format!(
+            "SELECT {COLUMNS} FROM evidence WHERE utc_us >= ?1 AND utc_us < ?2 ORDER BY seq"
+        );
+        let mut statement = self.db.prepare_cached(&text).map_err(sql)?;
+        let rows = statement.query_map([within.start, within.end], chain::row).map_err(sql)?;
+        for row in rows {
+            visit(&row.map_err(sql)?);
+        }
+        Ok(())
     }
 
     /// The last row of a kind; packs are looked through from the newest on.

@@ -2,7 +2,7 @@
 
 use std::path::PathBuf;
 
-use record::{Draft, Note, Row};
+use record::{Draft, Note, Row, Summary};
 use units::{Mono, Utc};
 
 use crate::anchor;
@@ -30,16 +30,19 @@ pub enum Task {
     Seal { before_day: i32 },
     /// Writes down where the chain ends; signed, if there is a secret key (Ed25519, RFC 8032).
     Anchor { key: Option<[u8; 32]> },
-    /// Copies the file and the segments into a folder, and verifies the copy.
-    Backup { to: PathBuf },
+    /// Copies the file and the segments into a folder, and verifies the copy; then older copies go,
+    /// but for so many.
+    Backup { to: PathBuf, keep: u32 },
     /// Deletes sealed segments of days before this one that no legal hold keeps.
     Retain { before_day: i32 },
     /// Keeps the segments of these days (the last one too) until the hold is lifted.
     Hold { from_day: i32, to_day: i32, by: String, reason: String },
     /// Lifts the hold on exactly these days.
     Lift { from_day: i32, to_day: i32, by: String, reason: String },
-    /// Verifies every row that the opening did not.
+    /// Verifies every row that there is when it begins, and so what the opening believed.
     Verify,
+    /// Counts what a day came to, and writes it down.
+    Summary { day: i32 },
 }
 
 /// What became of a task.
@@ -65,6 +68,7 @@ impl Task {
             Self::Hold { .. } => "legal hold",
             Self::Lift { .. } => "lifting a legal hold",
             Self::Verify => "verification",
+            Self::Summary { .. } => "summary of a day",
         }
     }
 }
@@ -96,9 +100,9 @@ impl Running {
     pub(crate) fn begin(task: Task, stamp: Stamp, journal: &Journal) -> Self {
         let work = match &task {
             Task::Seal { before_day } => Work::Seal(Sealing::new(*before_day)),
-            Task::Backup { to } => Work::Backup(Backing::new(to.clone())),
+            Task::Backup { to, keep } => Work::Backup(Backing::new(to.clone(), *keep)),
             Task::Verify => {
-                let until = journal.from();
+                let until = journal.head();
                 Work::Verify { walk: Walk::up_to(until.seq + 1), until }
             }
             _ => Work::Once,
@@ -158,10 +162,19 @@ fn once(task: &Task, desk: &mut Desk<'_>) -> Result<String, JournalError> {
         Task::Lift { from_day, to_day, by, reason } => {
             retain::lift(desk, Days { from: *from_day, to: *to_day }, by, reason)
         }
+        Task::Summary { day } => summary(desk, *day),
         Task::Seal { .. } | Task::Backup { .. } | Task::Verify => {
             unreachable!("these have work of their own")
         }
     }
+}
+
+fn summary(desk: &mut Desk<'_>, day: i32) -> Result<String, JournalError> {
+    let mut summary = Summary::of(day);
+    desk.journal.evidence.each_of_day(day, &mut |row| summary.push(row))?;
+    let words = format!("{:.0} m3 released, {} rows", summary.released_m3, summary.rows);
+    desk.keep(&[Note::Summary(summary)], &mut |_| Ok(()))?;
+    Ok(words)
 }
 
 /// Rows that a slice of the background verification takes.

@@ -92,7 +92,7 @@ fn a_start_may_walk_from_a_later_row_and_the_rest_is_verified_behind_it() {
         let journal = opening.walk(after, &mut |row| walked.push(row)).unwrap();
         assert_eq!(walked, acked[after as usize..]);
         let desk = Desk::of(journal);
-        assert_eq!(desk.done(FIRST_DAY, Task::Verify), format!("rows 1 to {after} verified"));
+        assert_eq!(desk.done(FIRST_DAY, Task::Verify), "rows 1 to 20000 verified");
         desk.handle.close().unwrap();
     }
     db(dir.path())
@@ -255,7 +255,7 @@ fn a_backup_is_made_while_rows_come_and_restores_to_the_same_hash() {
     let desk = Desk::open(dir.path());
     let seal = Task::Seal { before_day: FIRST_DAY + 1 };
     desk.done(FIRST_DAY + 1, seal);
-    desk.handle.task(desk.stamp(FIRST_DAY), Task::Backup { to: backups.clone() }).unwrap();
+    desk.handle.task(desk.stamp(FIRST_DAY), Task::Backup { to: backups.clone(), keep: 2 }).unwrap();
     let mut meanwhile = 0;
     let done = loop {
         desk.handle.submit(common_batch(&desk)).unwrap();
@@ -284,6 +284,39 @@ fn common_batch(desk: &Desk) -> journal::Batch {
     let journal::Stamp { term, utc, boot } = desk.stamp(FIRST_DAY);
     let (intents, seen) = (Vec::new(), journal::Seen::default());
     journal::Batch { term, utc, boot, drafts: vec![common::draft(1)], intents, seen }
+}
+
+#[test]
+fn old_backups_go_when_a_newer_one_is_there() {
+    let dir = tempfile::tempdir().unwrap();
+    let to = dir.path().join("backups");
+    let desk = Desk::open(dir.path());
+    for _ in 0..4 {
+        desk.write(FIRST_DAY, 3, 0);
+        desk.done(FIRST_DAY, Task::Backup { to: to.clone(), keep: 2 });
+    }
+    let mut names: Vec<String> =
+        fs::read_dir(&to).unwrap().map(|e| e.unwrap().file_name().into_string().unwrap()).collect();
+    names.sort();
+    // Each backup writes a row of its own, after the copy.
+    assert_eq!(names, ["evidence-11.sqlite", "evidence-15.sqlite"]);
+}
+
+#[test]
+fn a_day_is_summed_up_from_packed_and_live_rows() {
+    let dir = tempfile::tempdir().unwrap();
+    let desk = Desk::open(dir.path());
+    for _ in 0..13 {
+        desk.write(FIRST_DAY, 1000, 0);
+    }
+    desk.write(FIRST_DAY + 1, 10, 0);
+    assert_eq!(
+        desk.done(FIRST_DAY + 1, Task::Seal { before_day: 0 }),
+        "0 days sealed, 1 packs made"
+    );
+    let done = desk.task(FIRST_DAY + 1, Task::Summary { day: FIRST_DAY });
+    let Note::Summary(summary) = decode_note(&done.rows[0]).unwrap() else { panic!("{done:?}") };
+    assert_eq!((summary.day, summary.rows, summary.acts), (FIRST_DAY, 13_000, 0));
 }
 
 #[test]

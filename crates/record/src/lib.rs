@@ -33,6 +33,7 @@ mod intent;
 mod names;
 mod note;
 mod reader;
+mod summary;
 mod writer;
 
 pub use decode::decode;

@@ -84,8 +84,8 @@ pub enum Note {
 pub struct Summary {
     pub day: i32,
     pub rows: u64,
-    /// Gate openings and pump starts that were ordered.
-    pub releases: u32,
+    /// Orders to open or run: an opening that is moved on counts again.
+    pub openings: u32,
     pub released_m3: f64,
     pub windows_missed: u32,
     pub trips: u32,
@@ -218,7 +218,7 @@ fn put_hold(w: &mut Bytes, days: (i32, i32), by: &str, reason: &str) {
 fn put_summary(w: &mut Bytes, s: &Summary) {
     w.i32(s.day);
     w.u64(s.rows);
-    w.u32(s.releases);
+    w.u32(s.openings);
     w.u64(s.released_m3.to_bits());
     let counts = [s.windows_missed, s.trips, s.acts, s.refusals, s.rests, s.discrepancies];
     counts.into_iter().for_each(|n| w.u32(n));
@@ -283,7 +283,7 @@ fn take_summary(r: &mut Reader<'_>) -> Result<Summary, RecordError> {
     Ok(Summary {
         day: r.i32("day")?,
         rows: r.u64("rows")?,
-        releases: r.u32("releases")?,
+        openings: r.u32("openings")?,
         released_m3: r.f64("released")?,
         windows_missed: r.u32("windows missed")?,
         trips: r.u32("trips")?,
@@ -318,11 +318,11 @@ pub(crate) fn line(note: &Note) -> String {
         }
         Note::Migrated { from, to } => format!("evidence file lifted from form {from} to {to}"),
         Note::Summary(s) => format!(
-            "summary of {}: {:.0} m3 in {} releases, {} windows missed, {} trips, {} rests, \
+            "summary of {}: {:.0} m3, {} orders to open or run, {} windows missed, {} trips, {} rests, \
              {} discrepancies, {} acts, {} refusals, {} rows",
             date(s.day),
             s.released_m3,
-            s.releases,
+            s.openings,
             s.windows_missed,
             s.trips,
             s.rests,
