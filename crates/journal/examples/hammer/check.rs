@@ -6,7 +6,7 @@ use std::sync::mpsc::channel;
 
 use engine::{Entry, Outcome};
 use journal::{FILE_NAME, Journal, JournalError, Reply, verify};
-use record::{Row, decode, kind};
+use record::{Note, Row, decode, kind};
 use rusqlite::Connection;
 
 use crate::heard::Heard;
@@ -21,6 +21,10 @@ pub fn check(dir: &Path, acked: u64, heard: &Heard) -> Result<String, String> {
         return Err(format!("LOST-ROWS {} rows, {acked} were acknowledged", found.rows));
     }
     found.held_to(heard)?;
+    seen(dir, heard)?;
+    if let Some(file) = &found.backup {
+        backup(dir, file)?;
+    }
     let integrity = integrity(dir)?;
     if integrity != "ok" {
         return Err(format!("INTEGRITY {integrity}"));
@@ -56,6 +60,8 @@ struct Found {
     intents: BTreeMap<u64, u64>,
     never_left: BTreeSet<u64>,
     outcomes: BTreeSet<u64>,
+    /// The last that a row vouches for: (file, rows, hash of the last).
+    backup: Option<(String, u64, [u8; 32])>,
 }
 
 /// Opens it as the daemon does, adds a row, and closes it.
@@ -93,6 +99,11 @@ impl Found {
             let hash = line.rsplit(' ').next().unwrap_or_default().to_owned();
             self.hashes.insert(row.seq, hash);
         }
+        if row.kind == kind::BACKED_UP {
+            if let Ok(Note::BackedUp { file, of_seq, hash, .. }) = record::decode_note(row) {
+                self.backup = Some((file, of_seq, hash));
+            }
+        }
         if ![kind::INTENT, kind::OUTCOME].contains(&row.kind) {
             return Ok(());
         }
@@ -115,7 +126,9 @@ impl Found {
         for (seq, hash) in &heard.acked {
             if self.hashes.get(seq) != Some(hash) {
                 let found = self.hashes.get(seq);
-                return Err(format!("OTHER-ROW {seq}: {hash} was acknowledged, {found:?} is there"));
+                return Err(format!(
+                    "OTHER-ROW {seq}: {hash} was acknowledged, {found:?} is there"
+                ));
             }
         }
         for (command, seq) in &heard.commands {
@@ -126,16 +139,49 @@ impl Found {
                 return Err(format!("PHANTOM command {command} left, and a row denies it"));
             }
         }
-        if heard.done {
-            let open = self.intents.keys().find(|c| {
-                !heard.commands.contains_key(c) && !self.outcomes.contains(c)
-            });
-            if let Some(command) = open {
-                return Err(format!("OPEN-INTENT {command} never left, and no row says so"));
-            }
+        let ended = |c: &&u64| heard.done.contains(&load::term_of(**c));
+        let open = |c: &&u64| !heard.commands.contains_key(c) && !self.outcomes.contains(c);
+        if let Some(command) = self.intents.keys().filter(ended).find(open) {
+            return Err(format!("OPEN-INTENT {command} never left, and no row says so"));
         }
         Ok(())
     }
+}
+
+/// Every event that was acknowledged is there, and none twice.
+fn seen(dir: &Path, heard: &Heard) -> Result<(), String> {
+    let mut left = heard.seen.clone();
+    let mut all = BTreeSet::new();
+    let mut twice = None;
+    let visit = &mut |event: &[u8]| {
+        let hash = load::short_hash(event);
+        left.remove(&hash);
+        if !all.insert(hash) {
+            twice = Some(String::from_utf8_lossy(event).into_owned());
+        }
+    };
+    journal::events(dir, visit).map_err(|e| format!("EVENTS {}", said(&e)))?;
+    if let Some(event) = twice {
+        return Err(format!("TWICE {event}"));
+    }
+    if !left.is_empty() && !heard.may_go {
+        return Err(format!("LOST-EVENTS {} of {}", left.len(), heard.seen.len()));
+    }
+    Ok(())
+}
+
+/// The backup is there, restores, and is the record up to its row.
+fn backup(dir: &Path, (file, of_seq, hash): &(String, u64, [u8; 32])) -> Result<(), String> {
+    let to = dir.with_file_name("restored");
+    let _not_there = std::fs::remove_dir_all(&to);
+    let from = dir.with_file_name("backups").join(file);
+    let rows = journal::restore(&from, &to).map_err(|e| format!("RESTORE {file}: {}", said(&e)))?;
+    let verified = verify(&to, &mut |_, _| {}).map_err(|e| format!("RESTORED {}", said(&e)))?;
+    let hash = blake3::Hash::from_bytes(*hash).to_hex().to_string();
+    if rows != *of_seq || verified.head_hex != hash {
+        return Err(format!("RESTORED {file} has {rows} rows, its row says {of_seq}"));
+    }
+    Ok(())
 }
 
 fn integrity(dir: &Path) -> Result<String, String> {

@@ -4,6 +4,7 @@
 use journal::{FILE_NAME, Journal};
 use record::{Row, canonical_bytes};
 use rusqlite::{Connection, params};
+use units::{Mono, Utc};
 
 use crate::{Orders, load, say, site};
 
@@ -43,9 +44,9 @@ impl Durability {
 pub fn run(orders: &Orders) -> Result<u8, String> {
     let mut last = None;
     let made = Journal::open(&orders.dir, &mut |row| last = Some(row)).and_then(Journal::close);
-    let opened = made.map_err(|e| load::in_words(&e)).and_then(|()| {
-        settled(orders).map_err(|e| e.to_string())
-    });
+    let opened = made
+        .map_err(|e| load::in_words(&e))
+        .and_then(|()| settled(orders).map_err(|e| e.to_string()));
     let db = match opened {
         Ok(db) => db,
         Err(why) => {
@@ -54,12 +55,7 @@ pub fn run(orders: &Orders) -> Result<u8, String> {
         }
     };
     let term = last.as_ref().map_or(0, |r| r.term) + 1;
-    let mut writer = Writer {
-        db,
-        durability: orders.durability,
-        seq: last.as_ref().map_or(0, |r| r.seq),
-        hash: last.map_or([0; 32], |r| r.hash),
-    };
+    let mut writer = Writer::new(db, orders.durability, last.as_ref());
     let site = site::sallow();
     for no in 1..=orders.batches {
         if let Err(e) = writer.keep(load::batch(&site, orders.seed, term, no)) {
@@ -70,7 +66,7 @@ pub fn run(orders: &Orders) -> Result<u8, String> {
     if orders.mode == "append" {
         std::mem::forget(writer.db);
     }
-    say("DONE");
+    say(&format!("DONE {term}"));
     Ok(0)
 }
 
@@ -89,7 +85,7 @@ fn settled(orders: &Orders) -> rusqlite::Result<Connection> {
     Ok(db)
 }
 
-struct Writer {
+pub struct Writer {
     db: Connection,
     durability: Durability,
     seq: u64,
@@ -97,24 +93,19 @@ struct Writer {
 }
 
 impl Writer {
-    fn keep(&mut self, batch: journal::Batch) -> rusqlite::Result<()> {
+    pub fn new(db: Connection, durability: Durability, last: Option<&Row>) -> Self {
+        let (seq, hash) = last.map_or((0, [0; 32]), |r| (r.seq, r.hash));
+        Self { db, durability, seq, hash }
+    }
+
+    pub fn keep(&mut self, batch: journal::Batch) -> rusqlite::Result<()> {
         let journal::Batch { term, utc, boot, mut drafts, intents, .. } = batch;
         let mut commands = Vec::new();
         for intent in &intents {
             drafts.push(intent.draft().clone());
             commands.push((intent.permit().command(), self.seq + drafts.len() as u64));
         }
-        let mut rows = Vec::with_capacity(drafts.len());
-        for record::Draft { kind, version, subject, cause, body } in drafts {
-            self.seq += 1;
-            let seq = self.seq;
-            let hash = [0; 32];
-            let mut row =
-                Row { seq, term, utc, boot, kind, version, subject, cause, body, hash };
-            row.hash = chained(&self.hash, &row);
-            self.hash = row.hash;
-            rows.push(row);
-        }
+        let rows: Vec<Row> = drafts.into_iter().map(|d| self.next(d, term, utc, boot)).collect();
         if self.durability == Durability::Early {
             told(&rows, &commands);
         }
@@ -131,7 +122,19 @@ impl Writer {
         Ok(())
     }
 
-    fn write(&self, rows: &[Row]) -> rusqlite::Result<()> {
+    /// The row that follows.
+    pub fn next(&mut self, draft: record::Draft, term: u64, utc: Utc, boot: Mono) -> Row {
+        let record::Draft { kind, version, subject, cause, body } = draft;
+        self.seq += 1;
+        let (seq, hash) = (self.seq, [0; 32]);
+        let mut row = Row { seq, term, utc, boot, kind, version, subject, cause, body, hash };
+        row.hash = chained(&self.hash, &row);
+        self.hash = row.hash;
+        row
+    }
+
+    /// All of them, in one transaction.
+    pub fn write(&self, rows: &[Row]) -> rusqlite::Result<()> {
         self.db.execute_batch("BEGIN")?;
         for row in rows {
             let mut statement = self.db.prepare_cached(

@@ -1,6 +1,6 @@
 //! What a run said, so that the files can be held to it.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::path::Path;
 
 /// Empty if nothing was heard.
@@ -10,8 +10,12 @@ pub struct Heard {
     pub acked: BTreeMap<u64, String>,
     /// Commands that may have left, and the sequence of their intent.
     pub commands: BTreeMap<u64, u64>,
-    /// The run came to its end, with nothing left to be acknowledged.
-    pub done: bool,
+    /// Events that were acknowledged with their batch, by hash.
+    pub seen: BTreeSet<String>,
+    /// The legal hold was to be lifted: what was seen on the first day may go.
+    pub may_go: bool,
+    /// Terms that came to their end, with nothing left to be acknowledged.
+    pub done: BTreeSet<u64>,
 }
 
 impl Heard {
@@ -39,7 +43,13 @@ impl Heard {
                     return None;
                 }
             }
-            ["DONE"] => self.done = true,
+            ["SEEN", hash] => {
+                self.seen.insert(hash.to_owned());
+            }
+            ["MAY-GO"] => self.may_go = true,
+            ["DONE", term] => {
+                self.done.insert(term.parse().ok()?);
+            }
             _ => {}
         }
         Some(())

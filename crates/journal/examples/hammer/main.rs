@@ -2,12 +2,14 @@
 //! output what it was told, so that another process can hold the files to it after any fault.
 //!
 //! ```text
-//! hammer run MODE DIR [--seed N] [--batches N] [--patience-ms N] [--durability D] [--old FILE]
+//! hammer prepare MODE DIR     what a mode begins with, where that is not an empty folder
+//! hammer run MODE DIR [--seed N] [--batches N] [--patience-ms N] [--durability D]
 //! hammer check DIR [--acked N] [--heard FILE]
 //! hammer check --batch        lines on standard input: DIR, ACKED, HEARD, LINES (tabs between)
 //! ```
 //! Lines of a run, each written at once: `ACK seq hash8` after the acknowledgement of a row,
-//! `COMMAND id seq` for a permit that may leave, `LOST why`, `BACK`, `CLOSED`, `DONE`.
+//! `SEEN hash8` for an event of its batch, `COMMAND id seq` for a permit that may leave, `LOST why`,
+//! `BACK`, `TASK` or `FAILED` name, `CLOSED`, `DONE term`.
 //!
 //! Ends with 0 done or good, 1 the check found it bad, 2 usage, 3 still lost when patience ran out,
 //! 4 refused to open, 5 no answer at all, 6 the close failed.
@@ -16,6 +18,7 @@ mod check;
 mod control;
 mod heard;
 mod load;
+mod prepare;
 mod site;
 
 use std::io::{BufRead, Write};
@@ -41,6 +44,7 @@ fn main() -> ExitCode {
     let args: Vec<String> = std::env::args().skip(1).collect();
     let code = match args.first().map(String::as_str) {
         Some("run") => run(&args[1..]),
+        Some("prepare") => prepared(&args[1..]),
         Some("check") => checked(&args[1..]),
         _ => Err("hammer run MODE DIR ... or hammer check DIR ...".to_owned()),
     };
@@ -77,6 +81,11 @@ fn run(args: &[String]) -> Result<u8, String> {
         Durability::Full => load::run(&orders),
         _ => control::run(&orders),
     }
+}
+
+fn prepared(args: &[String]) -> Result<u8, String> {
+    let [mode, dir] = args else { return Err("a mode and a folder are needed".to_owned()) };
+    prepare::prepare(mode, Path::new(dir))
 }
 
 fn checked(args: &[String]) -> Result<u8, String> {

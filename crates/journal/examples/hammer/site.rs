@@ -9,9 +9,7 @@ use model::{
     RestActions, Settings, SignalId, Site,
 };
 use record::Intent;
-use units::{
-    Level, Mono, Percent, Span, Utc, Window, ZoneRules,
-};
+use units::{Level, Mono, Percent, Span, Utc, Window, ZoneRules};
 
 /// Invented; only its one asset's name gets into rows.
 pub fn sallow() -> Site {
@@ -51,6 +49,7 @@ pub fn sallow() -> Site {
         adapters: Vec::new(),
         licence: Licence { reference: String::new(), title: String::new(), clauses: Vec::new() },
         settings: settings(),
+        keeping: model::Keeping::default(),
         simulation: None,
         site_digest: String::new(),
         licence_digest: String::new(),
