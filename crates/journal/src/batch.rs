@@ -51,7 +51,8 @@ pub struct MinuteReading {
     /// The value is `steps` x 10^`exponent` in the signal's unit; none where nothing was read.
     pub steps: Option<i32>,
     pub exponent: i8,
-    /// 0 good, 1 suspect, 2 bad, 3 stale, 4 never read.
+    /// 0 good, 1 stale, 2 never read, 3 no number, 4 out of range, 5 too fast, 6 frozen, 7 bad at
+    /// the source, 8 from the future. 255 is not used.
     pub quality: u8,
 }
 

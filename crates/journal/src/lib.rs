@@ -72,6 +72,8 @@ pub use batch::{Acked, Batch, Minute, MinuteReading, Reply, Seen};
 pub use committed::Committed;
 pub use error::JournalError;
 pub use file::FILE_NAME;
+/// The form of the evidence file that this version writes.
+pub const FORM: u32 = forms::FORM as u32;
 pub use inspect::{Filter, each_row, events, minutes, rows};
 pub use journal::Journal;
 pub use opening::Opening;
