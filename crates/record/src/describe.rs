@@ -5,7 +5,7 @@ use interlock::Action;
 use model::{AssetId, RestAction};
 
 use crate::decode::read;
-use crate::names::Gathered;
+use crate::names::{Gathered, Named};
 use crate::note::{self, NOTES};
 use crate::{RecordError, Row, decode_note};
 
@@ -132,7 +132,7 @@ fn does(action: Action) -> String {
     }
 }
 
-fn ordered(act: &Act, names: &Gathered) -> String {
+pub(crate) fn ordered(act: &Act, names: &Gathered) -> String {
     let name = |asset: AssetId| names.asset_name(asset);
     match act.kind {
         ActKind::Mode(mode) => format!("mode {}", mode.words()),

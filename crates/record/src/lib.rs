@@ -23,16 +23,19 @@ pub mod kind;
 mod row;
 
 mod act;
+mod carried;
 mod cause;
 mod decode;
 mod describe;
 mod encode;
 mod error;
+mod fields;
 mod fold;
 mod intent;
 mod names;
 mod note;
 mod reader;
+mod snapshot;
 mod summary;
 mod writer;
 
@@ -40,6 +43,7 @@ pub use decode::decode;
 pub use describe::describe;
 pub use encode::{SITE, encode};
 pub use error::RecordError;
+pub use fields::{Field, Fields, Objection, fields};
 pub use fold::{Fold, RELEASED_KEPT, fold};
 pub use intent::Intent;
 pub use interlock::{Permit, Renewal};
