@@ -100,7 +100,7 @@ impl Backing {
         let head = desk.journal.head();
         let name = format!("evidence-{}.sqlite", head.seq);
         let part = self.to.join(format!("{name}.{PART}"));
-        let file = fs::create_dir_all(&self.to).and_then(|()| File::create(&part));
+        let file = durable::folder(&self.to).and_then(|()| File::create(&part));
         let file = file.map_err(|e| self.failed("beginning a backup", e))?;
         let bytes = desk.journal.evidence.source()?.metadata().map(|m| m.len());
         let bytes = bytes.map_err(|e| self.failed("asking for its size", e))?;

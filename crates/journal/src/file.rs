@@ -1,6 +1,7 @@
 //! The file: opened with every setting asked for and read back, or not at all.
 
 use std::fs::File;
+use std::os::unix::fs::FileExt;
 use std::path::{Path, PathBuf};
 use std::time::Duration;
 
@@ -51,6 +52,7 @@ impl Evidence {
             | OpenFlags::SQLITE_OPEN_NO_MUTEX;
         let mut evidence = Self::connect(dir.join(FILE_NAME), flags)?;
         evidence.settle()?;
+        evidence.renew_wal()?;
         evidence.lift()?;
         let source = File::open(&evidence.path);
         evidence.source = Some(source.map_err(|e| evidence.io("opening it to copy it", e))?);
@@ -134,13 +136,15 @@ impl Evidence {
         value: &str,
         wanted: &str,
     ) -> Result<(), JournalError> {
-        let ignore = |_: &rusqlite::Row<'_>| Ok(());
-        let set = self.db.pragma_update_and_check(None, setting, Word(value), ignore);
-        match set {
-            // Some settings answer with a row and some do not.
-            Ok(()) | Err(rusqlite::Error::QueryReturnedNoRows) => {}
-            Err(e) => return Err(self.sql("setting it up", e)),
-        }
+        // To the end: SQLite answers first and commits after it, so that an error of a change of
+        // the journal's mode comes with the step after the answer, and reading back does not tell.
+        let to_the_end = || -> rusqlite::Result<()> {
+            let mut statement = self.db.prepare(&format!("PRAGMA {setting} = {value}"))?;
+            let mut rows = statement.query([])?;
+            while rows.next()?.is_some() {}
+            Ok(())
+        };
+        to_the_end().map_err(|e| self.sql("setting it up", e))?;
         let found = self
             .db
             .pragma_query_value(None, setting, |row| row.get::<_, Value>(0))
@@ -155,6 +159,34 @@ impl Evidence {
         }
         let (path, wanted) = (self.path.clone(), wanted.to_owned());
         Err(JournalError::Setting { path, setting, wanted, found })
+    }
+
+    /// Writes the WAL over itself and syncs it. After a failed sync the kernel takes pages for clean
+    /// that are on no disk, and gives them to whoever reads next (Rebello et al., 2020): rows found
+    /// there would be believed, and gone with the next power cut. It takes no new room, so that a
+    /// full disk is no reason not to open.
+    fn renew_wal(&self) -> Result<(), JournalError> {
+        // Whoever can read holds the lock, and nobody else writes.
+        self.user_version()?;
+        let wal = PathBuf::from(format!("{}-wal", self.path.display()));
+        let file = match File::options().read(true).write(true).open(&wal) {
+            Ok(file) => file,
+            Err(e) if e.kind() == std::io::ErrorKind::NotFound => return Ok(()),
+            Err(e) => return Err(self.io("opening its WAL", e)),
+        };
+        let mut buffer = vec![0; 1 << 16];
+        let mut at = 0;
+        let renewed = loop {
+            match file.read_at(&mut buffer, at) {
+                Ok(0) => break file.sync_all(),
+                Ok(n) => match file.write_all_at(&buffer[..n], at) {
+                    Ok(()) => at += n as u64,
+                    Err(e) => break Err(e),
+                },
+                Err(e) => break Err(e),
+            }
+        };
+        renewed.map_err(|e| self.io("writing its WAL over itself", e))
     }
 
     fn user_version(&self) -> Result<i64, JournalError> {
@@ -226,17 +258,5 @@ impl Evidence {
         self.fold_in_at_close(true)?;
         let Self { db, path, source: _until_here, .. } = self;
         db.close().map_err(|(_, source)| JournalError::Sql { path, doing: "closing", source })
-    }
-}
-
-/// A value of a setting as SQL text; they are all constants of ours.
-struct Word<'a>(&'a str);
-
-impl rusqlite::ToSql for Word<'_> {
-    fn to_sql(&self) -> rusqlite::Result<rusqlite::types::ToSqlOutput<'_>> {
-        Ok(match self.0.parse::<i64>() {
-            Ok(n) => n.into(),
-            Err(_) => self.0.into(),
-        })
     }
 }

@@ -163,7 +163,7 @@ fn name(day: i64, first_no: i64) -> String {
 
 /// All of it under its name, or nothing.
 fn write(dir: &Path, name: &str, made: &Made) -> std::io::Result<()> {
-    fs::create_dir_all(dir)?;
+    durable::folder(dir)?;
     let part = dir.join(format!("{name}.part"));
     let written = File::create(&part).and_then(|mut file| {
         file.write_all(&made.bytes)?;

@@ -99,10 +99,10 @@ impl Found {
             let hash = line.rsplit(' ').next().unwrap_or_default().to_owned();
             self.hashes.insert(row.seq, hash);
         }
-        if row.kind == kind::BACKED_UP {
-            if let Ok(Note::BackedUp { file, of_seq, hash, .. }) = record::decode_note(row) {
-                self.backup = Some((file, of_seq, hash));
-            }
+        if row.kind == kind::BACKED_UP
+            && let Ok(Note::BackedUp { file, of_seq, hash, .. }) = record::decode_note(row)
+        {
+            self.backup = Some((file, of_seq, hash));
         }
         if ![kind::INTENT, kind::OUTCOME].contains(&row.kind) {
             return Ok(());

@@ -35,7 +35,10 @@ pub fn run(orders: &Orders) -> Result<u8, String> {
     let (site, events) = (site::sallow(), Vec::new());
     let (lost, undone) = (false, 0);
     let mut load = Load { orders, site, term, handle, replies, events, lost, undone };
-    let code = load.mode(lifted_from)?;
+    let mut code = load.mode(lifted_from)?;
+    while code == 0 && load.owed() {
+        code = load.answers()?;
+    }
     if code == 0 {
         say(&format!("DONE {term}"));
     }
@@ -276,7 +279,7 @@ fn seen(seed: u64, term: u64, no: u64, n: u64, at: Utc) -> Seen {
     let event = |k| format!("event {k} of batch {no} in term {term} of {seed}").into_bytes();
     let reading = |k: u64| MinuteReading {
         signal: format!("level-{k}"),
-        steps: (mixed(seed, no + k) % 9 != 0).then_some((mixed(seed, no) % 5_000) as i32),
+        steps: (!mixed(seed, no + k).is_multiple_of(9)).then_some((mixed(seed, no) % 5_000) as i32),
         exponent: -3,
         quality: 0,
     };
