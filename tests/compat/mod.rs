@@ -1,1 +1,3 @@
-//! To be filled.
+//! What older versions wrote is still read: one file a kind of thing, golden bytes in `v1/`.
+
+mod evidence;
