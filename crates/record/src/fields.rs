@@ -119,7 +119,7 @@ fn water(entry: &Entry, names: &Gathered) -> Option<Fields> {
 fn act_fields(act: &Act, refused: Option<&str>, names: &Gathered) -> Fields {
     Fields::of([
         ("ordered", text(&ordered(act, names))),
-        ("by", text(&act.by)),
+        ("who", text(&act.by)),
         ("reason", text(&act.reason)),
         ("peer", text(&act.peer)),
         ("refused", refused.map_or(Field::Nothing, text)),

@@ -22,22 +22,32 @@
 //! Whatever cannot be understood is carried as the safe latch, so that a person looks before
 //! anything moves: a row that does not read, or a latch, lock or open intent on an asset that the
 //! site file no longer has. A reset of the safe latch also clears what had been strange before it.
+//!
+//! What the fold keeps on the way stays small: at each change of the day it drops what has ended
+//! (buckets and starts past their time, holds that are over). A clock that jumped ahead by mistake
+//! must not make it drop what still counts once the clock is right again: so, after a jump of more
+//! than a day, nothing younger than the jump ends until the clock has gone on from there for 62 days,
+//! or has gone back. All this is part of the state, so that a snapshot of it loses nothing.
 
 use std::collections::{BTreeMap, BTreeSet};
 
 use engine::{Act, ActKind, Carried, Entry, Mode, OpenIntent, Outcome, StandingAuthorisation};
 use interlock::Action;
-use model::{AssetId, PlanId, Site, Term, TideNumber};
-use units::{CubicMetres, Span, Utc, Window};
+use model::{AssetId, PlanId, Site, Term};
+use units::{Span, Utc};
 
+use crate::carried::Released;
 use crate::decode::read;
-use crate::names::{Gathered, Names};
+use crate::names::{Gathered, Named, Names};
 use crate::note::NOTES;
 use crate::{Row, kind};
 
 /// How long a released bucket matters: two of the longest calendar months.
 pub const RELEASED_KEPT: Span = Span::days(62);
 const STARTS_KEPT: Span = Span::hours(24);
+/// Between two rows: more than this is a jump of the clock, or a long outage. What has ended is kept
+/// for as long again, as shorter jumps are not noticed.
+const JUMP: Span = Span::days(1);
 /// The hold that the engine puts on an asset that a person sends to rest.
 const HELD_AFTER_REST: Span = Span::hours(1);
 
@@ -46,17 +56,20 @@ const HELD_AFTER_REST: Span = Span::hours(1);
 pub struct Fold {
     /// The assets of the site file as it is now.
     site: Vec<(String, AssetId)>,
-    names: Gathered,
-    carried: Carried,
-    latches: BTreeMap<Option<AssetId>, String>,
-    locks: BTreeMap<AssetId, String>,
-    holds: BTreeMap<AssetId, Utc>,
+    /// What is below has the indices of these.
+    pub(crate) names: Gathered,
+    pub(crate) carried: Carried,
+    pub(crate) latches: BTreeMap<Option<AssetId>, String>,
+    pub(crate) locks: BTreeMap<AssetId, String>,
+    pub(crate) holds: BTreeMap<AssetId, Utc>,
     /// A `rest all`: holds every asset that is not in `given_back` since.
-    hold_all: Option<Utc>,
-    given_back: BTreeSet<AssetId>,
-    open: BTreeMap<AssetId, Vec<OpenIntent>>,
+    pub(crate) hold_all: Option<Utc>,
+    pub(crate) given_back: BTreeSet<AssetId>,
+    pub(crate) open: BTreeMap<AssetId, Vec<OpenIntent>>,
     /// (sequence of the row, why it cannot be read), the first one.
-    unreadable: Option<(u64, String)>,
+    pub(crate) unreadable: Option<(u64, String)>,
+    /// Jumps of the clock that may yet turn out to be mistakes: (before, after).
+    pub(crate) jumps: Vec<(Utc, Utc)>,
 }
 
 /// What the rows, in order, hand to the next term of `site`.
@@ -82,11 +95,13 @@ impl Fold {
             given_back: BTreeSet::new(),
             open: BTreeMap::new(),
             unreadable: None,
+            jumps: Vec::new(),
         }
     }
 
     /// Rows come in order of their sequence.
     pub fn push(&mut self, row: &Row) {
+        self.pass_time(row.utc);
         self.carried.term = Some(Term(row.term));
         self.carried.last_seen = Some(row.utc);
         // Most rows are decisions and confirmations of no consequence here, and notes of the record
@@ -110,6 +125,32 @@ impl Fold {
             Err(e) => {
                 self.unreadable.get_or_insert((row.seq, e.to_string()));
             }
+        }
+    }
+
+    fn pass_time(&mut self, now: Utc) {
+        let Some(last) = self.carried.last_seen else { return };
+        self.jumps.retain(|(_, after)| *after <= now && now - *after < RELEASED_KEPT);
+        if now - last > JUMP {
+            self.jumps.push((last, now));
+        }
+        let day = |t: Utc| t.as_micros().div_euclid(Span::days(1).as_micros());
+        if day(now) != day(last) {
+            let sure = self.jumps.iter().fold(now, |sure, (before, _)| sure.min(*before));
+            self.drop_ended(sure - JUMP);
+        }
+    }
+
+    fn drop_ended(&mut self, by: Utc) {
+        self.carried.released.retain(|(bucket, ..)| bucket.end() > by - RELEASED_KEPT);
+        self.carried.starts.retain(|(_, at)| *at > by - STARTS_KEPT);
+        if self.hold_all.is_some_and(|until| until <= by) {
+            self.hold_all = None;
+            self.given_back.clear();
+        }
+        // An asset's own hold stands against a `rest all` even when it is over.
+        if self.hold_all.is_none() {
+            self.holds.retain(|_, until| *until > by);
         }
     }
 
@@ -305,8 +346,6 @@ impl Fold {
 fn last_active(open: &[OpenIntent]) -> Option<OpenIntent> {
     open.iter().rev().find(|o| o.action.is_active()).copied()
 }
-
-type Released = Vec<(Window, CubicMetres, TideNumber)>;
 
 fn recent(released: Released, last: Utc) -> Released {
     released.into_iter().filter(|(bucket, ..)| bucket.end() > last - RELEASED_KEPT).collect()

@@ -8,7 +8,7 @@ use model::{AssetId, Site};
 
 use crate::decode::read;
 use crate::encode::{IntentBody, put_outcome};
-use crate::names::Gathered;
+use crate::names::{Gathered, Named};
 use crate::writer::Writer;
 use crate::{Draft, RecordError, Row, VERSION, kind};
 

@@ -39,6 +39,9 @@ mod snapshot;
 mod summary;
 mod writer;
 
+#[cfg(test)]
+mod tests;
+
 pub use decode::decode;
 pub use describe::describe;
 pub use encode::{SITE, encode};

@@ -1,4 +1,4 @@
-//! From names in rows to small indices: by the site file, or by a list gathered on the way.
+//! From names in rows to small indices and back: by the site file, or by a list gathered on the way.
 
 use model::{AdapterId, AssetId, ClauseId, SignalId, Site};
 
@@ -10,6 +10,29 @@ pub(crate) trait Names {
     fn signal(&mut self, name: &str) -> Result<SignalId, RecordError>;
     fn adapter(&mut self, name: &str) -> Result<AdapterId, RecordError>;
     fn clause(&mut self, number: &str) -> Result<ClauseId, RecordError>;
+}
+
+/// Gives the name of each index. An index that was never given out is a fault of ours and panics.
+pub(crate) trait Named {
+    fn asset_name(&self, id: AssetId) -> &str;
+    fn signal_name(&self, id: SignalId) -> &str;
+    fn adapter_name(&self, id: AdapterId) -> &str;
+    fn clause_number(&self, id: ClauseId) -> &str;
+}
+
+impl Named for Site {
+    fn asset_name(&self, id: AssetId) -> &str {
+        &self.asset(id).name
+    }
+    fn signal_name(&self, id: SignalId) -> &str {
+        &self.signal(id).name
+    }
+    fn adapter_name(&self, id: AdapterId) -> &str {
+        &self.adapters[id.index()].name
+    }
+    fn clause_number(&self, id: ClauseId) -> &str {
+        &self.licence.clause(id).number
+    }
 }
 
 fn missing(what: &'static str, name: &str) -> RecordError {
@@ -45,10 +68,22 @@ pub(crate) struct Gathered {
 }
 
 impl Gathered {
-    pub(crate) fn asset_name(&self, id: AssetId) -> &str {
+    pub(crate) fn assets(&self) -> &[String] {
+        &self.assets
+    }
+}
+
+impl Named for Gathered {
+    fn asset_name(&self, id: AssetId) -> &str {
         &self.assets[id.index()]
     }
-    pub(crate) fn clause_number(&self, id: ClauseId) -> &str {
+    fn signal_name(&self, id: SignalId) -> &str {
+        &self.signals[id.index()]
+    }
+    fn adapter_name(&self, id: AdapterId) -> &str {
+        &self.adapters[id.index()]
+    }
+    fn clause_number(&self, id: ClauseId) -> &str {
         &self.clauses[id.index()]
     }
 }

@@ -6,6 +6,7 @@ use units::Utc;
 use crate::encode::SITE;
 use crate::names::Gathered;
 use crate::reader::Reader;
+use crate::writer::Writer;
 use crate::{Draft, RecordError, Row, VERSION, kind};
 
 /// An Ed25519 signature (RFC 8032) of an anchor, and the public key that it is by.
@@ -100,14 +101,16 @@ pub(crate) const NOTES: core::ops::RangeInclusive<u16> = kind::SEALED..=kind::JO
 
 /// The row's content for a note; its subject is the site.
 pub fn encode_note(note: &Note) -> Draft {
-    let mut w = Bytes(Vec::new());
+    // Notes name nothing of the site file.
+    let names = Gathered::default();
+    let mut w = Writer::new(&names);
     let kind = put(&mut w, note);
     let cause = match note {
         Note::SegmentDeleted { why, .. } | Note::JournalBack { why, .. } => why.clone(),
         Note::LegalHold { reason, .. } | Note::HoldLifted { reason, .. } => reason.clone(),
         _ => String::new(),
     };
-    Draft { kind, version: VERSION, subject: SITE.to_owned(), cause, body: w.0 }
+    Draft { kind, version: VERSION, subject: SITE.to_owned(), cause, body: w.bytes }
 }
 
 /// The note that a row was made of. Refuses, without panicking, whatever is no note of this version.
@@ -122,41 +125,19 @@ pub fn decode_note(row: &Row) -> Result<Note, RecordError> {
     Ok(note)
 }
 
-/// Notes name nothing of the site file, so that their writer needs none.
-struct Bytes(Vec<u8>);
-
-impl Bytes {
-    fn u32(&mut self, v: u32) {
-        self.0.extend(v.to_le_bytes());
-    }
-    fn i32(&mut self, v: i32) {
-        self.0.extend(v.to_le_bytes());
-    }
-    fn u64(&mut self, v: u64) {
-        self.0.extend(v.to_le_bytes());
-    }
-    fn blob(&mut self, v: &[u8]) {
-        self.u32(u32::try_from(v.len()).expect("no note is as long as 4 GiB"));
-        self.0.extend(v);
-    }
-    fn text(&mut self, v: &str) {
-        self.blob(v.as_bytes());
-    }
-}
-
-fn put(w: &mut Bytes, note: &Note) -> u16 {
+fn put(w: &mut Writer<'_>, note: &Note) -> u16 {
     match note {
         Note::Sealed { day, file, digest, events, minutes, bytes } => {
             w.i32(*day);
             w.text(file);
-            w.0.extend(digest);
+            w.bytes.extend(digest);
             [*events, *minutes, *bytes].into_iter().for_each(|n| w.u64(n));
             kind::SEALED
         }
         Note::SegmentDeleted { day, file, digest, why } => {
             w.i32(*day);
             w.text(file);
-            w.0.extend(digest);
+            w.bytes.extend(digest);
             w.text(why);
             kind::SEGMENT_DELETED
         }
@@ -167,18 +148,18 @@ fn put(w: &mut Bytes, note: &Note) -> u16 {
         }
         Note::Anchored { of_seq, hash, signature } => {
             w.u64(*of_seq);
-            w.0.extend(hash);
-            w.0.push(u8::from(signature.is_some()));
+            w.bytes.extend(hash);
+            w.flag(signature.is_some());
             if let Some(AnchorSignature { key, bytes }) = signature {
-                w.0.extend(key);
-                w.0.extend(bytes);
+                w.bytes.extend(key);
+                w.bytes.extend(bytes);
             }
             kind::ANCHORED
         }
         Note::BackedUp { file, of_seq, hash, bytes } => {
             w.text(file);
             w.u64(*of_seq);
-            w.0.extend(hash);
+            w.bytes.extend(hash);
             w.u64(*bytes);
             kind::BACKED_UP
         }
@@ -200,7 +181,7 @@ fn put(w: &mut Bytes, note: &Note) -> u16 {
             kind::SUMMARY
         }
         Note::JournalBack { lost_at, why, rows_kept } => {
-            w.u64(lost_at.as_micros().cast_unsigned());
+            w.utc(*lost_at);
             w.text(why);
             w.u64(*rows_kept);
             kind::JOURNAL_BACK
@@ -208,18 +189,18 @@ fn put(w: &mut Bytes, note: &Note) -> u16 {
     }
 }
 
-fn put_hold(w: &mut Bytes, days: (i32, i32), by: &str, reason: &str) {
+fn put_hold(w: &mut Writer<'_>, days: (i32, i32), by: &str, reason: &str) {
     w.i32(days.0);
     w.i32(days.1);
     w.text(by);
     w.text(reason);
 }
 
-fn put_summary(w: &mut Bytes, s: &Summary) {
+fn put_summary(w: &mut Writer<'_>, s: &Summary) {
     w.i32(s.day);
     w.u64(s.rows);
     w.u32(s.openings);
-    w.u64(s.released_m3.to_bits());
+    w.f64(s.released_m3);
     let counts = [s.windows_missed, s.trips, s.acts, s.refusals, s.rests, s.discrepancies];
     counts.into_iter().for_each(|n| w.u32(n));
 }

@@ -51,6 +51,33 @@ impl<'a> Reader<'a> {
     pub(crate) fn f64(&mut self, field: &'static str) -> Read<f64> {
         Ok(f64::from_bits(self.u64(field)?))
     }
+    /// Refuses more than 64 bits.
+    pub(crate) fn small(&mut self, field: &'static str) -> Read<u64> {
+        let mut n = 0_u64;
+        for shift in (0..64).step_by(7) {
+            let byte = self.u8(field)?;
+            let part = u64::from(byte & 0x7f);
+            if (part << shift) >> shift != part {
+                break;
+            }
+            n |= part << shift;
+            if byte < 0x80 {
+                return Ok(n);
+            }
+        }
+        Err(RecordError::Bad { field, why: "a number of more than 64 bits".to_owned() })
+    }
+    pub(crate) fn step(&mut self, field: &'static str, from: i64) -> Read<i64> {
+        let n = self.small(field)?;
+        let step = (n >> 1).cast_signed() ^ -((n & 1).cast_signed());
+        Ok(from.wrapping_add(step))
+    }
+    /// A count of items, each of at least this many bytes: a longer list is not in this body.
+    pub(crate) fn small_count(&mut self, field: &'static str, bytes: u64) -> Read<u64> {
+        let n = self.small(field)?;
+        let most = self.rest.len() as u64 / bytes;
+        if n > most { Err(RecordError::Short { field }) } else { Ok(n) }
+    }
     pub(crate) fn flag(&mut self, field: &'static str) -> Read<bool> {
         match self.u8(field)? {
             0 => Ok(false),

@@ -1,23 +1,48 @@
 //! Putting fields into a body: little-endian, fixed order, names as text.
+//!
+//! Rows have fields of fixed length. Snapshots and events, which are many or long, have `small`
+//! numbers (seven bits a byte, lowest first, the top bit says that more follow) and `step`s from the
+//! number before.
 
 use interlock::Action;
-use model::{AdapterId, AssetId, ClauseId, RestAction, SignalId, Site};
+use model::{AdapterId, AssetId, ClauseId, RestAction, SignalId};
 use units::{Mono, Percent, Utc, Window};
 
 use engine::{ClockTrust, Mode};
 
-/// Writes one body. Names come from the site, so that the row reads without it.
+use crate::names::Named;
+
+/// Writes one body. Names are written out, so that it reads without the site file.
 pub(crate) struct Writer<'a> {
     pub(crate) bytes: Vec<u8>,
-    pub(crate) site: &'a Site,
+    names: &'a dyn Named,
 }
 
 impl<'a> Writer<'a> {
-    pub(crate) fn new(site: &'a Site) -> Self {
-        Self { bytes: Vec::new(), site }
+    pub(crate) fn new(names: &'a dyn Named) -> Self {
+        Self { bytes: Vec::new(), names }
     }
     pub(crate) fn u8(&mut self, v: u8) {
         self.bytes.push(v);
+    }
+    pub(crate) fn u32(&mut self, v: u32) {
+        self.bytes.extend(v.to_le_bytes());
+    }
+    pub(crate) fn i32(&mut self, v: i32) {
+        self.bytes.extend(v.to_le_bytes());
+    }
+    pub(crate) fn small(&mut self, mut n: u64) {
+        while n >= 0x80 {
+            self.u8(0x80 | (n & 0x7f) as u8);
+            n >>= 7;
+        }
+        self.u8(n as u8);
+    }
+    /// How far it is from one number to another, small ones either way in one byte. It wraps, so
+    /// that any two numbers have a step.
+    pub(crate) fn step(&mut self, from: i64, to: i64) {
+        let step = to.wrapping_sub(from);
+        self.small(((step << 1) ^ (step >> 63)).cast_unsigned());
     }
     pub(crate) fn u64(&mut self, v: u64) {
         self.bytes.extend(v.to_le_bytes());
@@ -37,9 +62,12 @@ impl<'a> Writer<'a> {
         let n = u32::try_from(n).expect("no list or text has four thousand million items");
         self.bytes.extend(n.to_le_bytes());
     }
-    pub(crate) fn text(&mut self, v: &str) {
+    pub(crate) fn blob(&mut self, v: &[u8]) {
         self.count(v.len());
-        self.bytes.extend(v.as_bytes());
+        self.bytes.extend(v);
+    }
+    pub(crate) fn text(&mut self, v: &str) {
+        self.blob(v.as_bytes());
     }
     pub(crate) fn option<T>(&mut self, v: Option<T>, put: impl FnOnce(&mut Self, T)) {
         self.flag(v.is_some());
@@ -67,20 +95,20 @@ impl<'a> Writer<'a> {
         self.f64(p.get());
     }
     pub(crate) fn asset(&mut self, id: AssetId) {
-        let site = self.site;
-        self.text(&site.asset(id).name);
+        let names = self.names;
+        self.text(names.asset_name(id));
     }
     pub(crate) fn signal(&mut self, id: SignalId) {
-        let site = self.site;
-        self.text(&site.signal(id).name);
+        let names = self.names;
+        self.text(names.signal_name(id));
     }
     pub(crate) fn adapter(&mut self, id: AdapterId) {
-        let site = self.site;
-        self.text(&site.adapters[id.index()].name);
+        let names = self.names;
+        self.text(names.adapter_name(id));
     }
     pub(crate) fn clause(&mut self, id: ClauseId) {
-        let site = self.site;
-        self.text(&site.licence.clause(id).number);
+        let names = self.names;
+        self.text(names.clause_number(id));
     }
     pub(crate) fn action(&mut self, action: Action) {
         match action {
