@@ -126,6 +126,13 @@ impl Host {
     ) -> Result<(), HostError> {
         self.send(adapter, Work::Rest { points, cause, words: words.to_owned() })
     }
+    /// Tells every adapter that wants to know where the record's chain ended.
+    pub fn anchor(&self, anchor: &str) {
+        for (id, ..) in &self.adapters {
+            // One that is full or gone does without this one.
+            let _ = self.send(*id, Work::Anchor { anchor: anchor.to_owned() });
+        }
+    }
     /// Ends every adapter: each brings its points to rest, and is killed if it has not ended in
     /// `within` of real time.
     pub fn finish(self, within: Duration) {

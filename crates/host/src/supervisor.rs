@@ -13,8 +13,8 @@ use std::time::Duration;
 use interlock::Renewal;
 use journal::Committed;
 use protocol::{
-    Drive, Introduce, Introduced, Message, Renew, RenewOne, Rest, RestCause, RestOne, Sensed,
-    VERSION, method, parse, request,
+    Anchor, Drive, Introduce, Introduced, Message, Renew, RenewOne, Rest, RestCause, RestOne,
+    Sensed, VERSION, feature, method, notification, parse, request,
 };
 use serde_json::Value;
 
@@ -34,6 +34,9 @@ pub(crate) enum Work {
         points: Vec<RestPoint>,
         cause: RestCause,
         words: String,
+    },
+    Anchor {
+        anchor: String,
     },
     Finish {
         within: Duration,
@@ -56,6 +59,8 @@ pub(crate) struct Supervisor {
     now: Now,
     running: Option<Running>,
     introduced: bool,
+    /// What the adapter said it knows of.
+    features: Vec<String>,
     life: u64,
     sequence: u64,
     pending: Pending,
@@ -85,6 +90,7 @@ impl Supervisor {
             now,
             running: None,
             introduced: false,
+            features: Vec::new(),
             life: 0,
             sequence: 0,
             pending: Pending::default(),
@@ -144,7 +150,7 @@ impl Supervisor {
                 self.running = Some(running);
                 let introduce = Introduce {
                     version: VERSION,
-                    features: Vec::new(),
+                    features: vec![feature::ANCHORS.to_owned()],
                     site: self.spec.site.clone(),
                     term: self.spec.term,
                     session: format!("{}-{}", self.spec.term, self.life),
@@ -200,6 +206,7 @@ impl Supervisor {
             Work::Drive { point, committed } => self.drive(point, &committed),
             Work::Renew(renewal) => self.renew(&renewal),
             Work::Rest { points, cause, words } => self.rest(points, cause, words),
+            Work::Anchor { anchor } => self.anchor(anchor),
             Work::Said { life, line } if life == self.life && self.running.is_some() => {
                 self.said(&line);
             }
@@ -254,6 +261,20 @@ impl Supervisor {
         self.call(Call::Other, method::REST, &rest);
     }
 
+    /// Only for those that want it; that it is not kept elsewhere once is no fault of the adapter's.
+    fn anchor(&mut self, anchor: String) {
+        if !self.introduced || !self.features.iter().any(|f| f == feature::ANCHORS) {
+            return;
+        }
+        let site = self.spec.site.clone();
+        let line = notification(method::ANCHOR, &Anchor { site, anchor });
+        if let (Some(running), Ok(line)) = (&mut self.running, line)
+            && let Err(e) = running.write(&line)
+        {
+            self.down(&format!("its input is closed: {e}"));
+        }
+    }
+
     fn said(&mut self, line: &[u8]) {
         match parse(line) {
             Ok(Message::Answer { id, result }) => {
@@ -282,6 +303,7 @@ impl Supervisor {
             Call::Introduce => match serde_json::from_value::<Introduced>(result) {
                 Ok(introduced) => {
                     self.introduced = true;
+                    self.features = introduced.features;
                     self.up_since = real();
                     let (adapter, points) = (self.spec.id, introduced.points);
                     self.tell(HostEvent::Up { adapter, points });

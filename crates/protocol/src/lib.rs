@@ -19,9 +19,9 @@ mod messages;
 pub use codes::{Code, RpcError};
 pub use framing::{BadLine, Message, answer, failure, notification, parse, request};
 pub use messages::{
-    Drive, Introduce, Introduced, LeaseHolder, Point, PointKind, Quality, Reading, Renew, RenewOne,
-    Rest, RestAction, RestCause, RestOne, RestSet, Sense, Sensed, Series, Severity, Trouble,
-    method,
+    Anchor, Drive, Introduce, Introduced, LeaseHolder, Point, PointKind, Quality, Reading, Renew,
+    RenewOne, Rest, RestAction, RestCause, RestOne, RestSet, Sense, Sensed, Series, Severity,
+    Trouble, feature, method,
 };
 
 /// The version that this crate speaks.

@@ -12,10 +12,18 @@ pub mod method {
     pub const REST: &str = "rest";
     pub const SENSE: &str = "sense";
     pub const FINISH: &str = "finish";
+    /// A notification to those adapters that named the feature.
+    pub const ANCHOR: &str = "anchor";
     /// Notifications from the adapter.
     pub const READING: &str = "reading";
     pub const SERIES: &str = "series";
     pub const TROUBLE: &str = "trouble";
+}
+
+/// Feature names: what one side may do if the other knows of it.
+pub mod feature {
+    /// The adapter wants to be told where the record's chain ends, to keep it elsewhere.
+    pub const ANCHORS: &str = "anchors";
 }
 
 /// First message, from the daemon.
@@ -38,6 +46,17 @@ pub struct Introduced {
     pub name: String,
     pub version: String,
     pub points: Vec<Point>,
+    /// Of [`feature`]; none unless it says so.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub features: Vec<String>,
+}
+
+/// Where the chain of the record ended.
+#[derive(Serialize, Deserialize, Clone, PartialEq, Eq, Debug)]
+pub struct Anchor {
+    pub site: String,
+    /// `1234:` and 64 hexadecimal digits, as `journal verify --anchor` takes it.
+    pub anchor: String,
 }
 
 /// Something that can be read or driven.

@@ -6,9 +6,9 @@ use std::thread;
 use std::time::Duration;
 
 use protocol::{
-    Code, Drive, Introduce, Introduced, LINE_MAX, Message, Reading, Renew, Rest, RestAction,
-    RestCause, RpcError, Sense, Sensed, Trouble, VERSION, answer, failure, method, notification,
-    parse,
+    Anchor, Code, Drive, Introduce, Introduced, LINE_MAX, Message, Reading, Renew, Rest,
+    RestAction, RestCause, RpcError, Sense, Sensed, Trouble, VERSION, answer, failure, method,
+    notification, parse,
 };
 use serde_json::Value;
 
@@ -26,6 +26,8 @@ pub trait Adapter {
     /// To rest, now.
     fn rest(&mut self, point: &str, action: RestAction, cause: RestCause);
     fn sense(&mut self, points: &[String]) -> Vec<Reading>;
+    /// Where the record's chain ended, if `introduce` named the feature: keep it elsewhere.
+    fn anchored(&mut self, _anchor: &Anchor) {}
     /// Called at least every [`Adapter::tick_every`]; put unasked readings and troubles in the box.
     fn tick(&mut self, out: &mut Outbox);
     fn tick_every(&self) -> Duration {
@@ -215,7 +217,15 @@ impl<A: Adapter, W: Write> Session<A, W> {
     fn take(&mut self, line: &[u8]) -> Result<bool, SdkError> {
         let (id, name, params) = match parse(line) {
             Ok(Message::Request { id, method, params }) => (id, method, params),
-            // Nothing that the daemon sends unasked or answers concerns an adapter.
+            Ok(Message::Notification { method, params }) if method == method::ANCHOR => {
+                if let Ok(anchor) = serde_json::from_value(params)
+                    && self.rules.is_introduced()
+                {
+                    self.adapter.anchored(&anchor);
+                }
+                return Ok(true);
+            }
+            // Nothing else that the daemon sends unasked or answers concerns an adapter.
             Ok(_) => return Ok(true),
             Err(bad) => {
                 let error = RpcError::new(Code::ParseError, bad.to_string());

@@ -1,7 +1,7 @@
 //! An adapter built to do everything wrong, one way at a time, for tests of the host.
 //!
 //! `misbehave HOW`: garbage, silent, twice, wrong-id, exit-early, wrong-version, flood, long-line,
-//! half-line, request, die-after (dies once it has been introduced), well (does nothing wrong).
+//! half-line, request, die-after (dies once it has been introduced), anchors (does nothing wrong, and wants to be told of them), well (does nothing wrong).
 
 use std::io::{BufRead, Write, stdin, stdout};
 
@@ -57,6 +57,17 @@ fn main() {
                 say(&format!("{good}\n"));
                 return;
             }
+            // Wants anchors, and reads each out as a trouble.
+            "anchors" if line.contains("\"method\":\"anchor\"") => {
+                let words = line.replace(['"', '\\'], "'");
+                let params = format!(r#"{{"point":null,"severity":"info","words":"{words}"}}"#);
+                say(&format!(r#"{{"jsonrpc":"2.0","method":"trouble","params":{params}}}"#));
+                say("\n");
+            }
+            "anchors" => say(&format!(
+                "{}\n",
+                good.replace("\"points\"", "\"features\":[\"anchors\"],\"points\"")
+            )),
             _ => say(&format!("{good}\n")),
         }
         if count > 100 {

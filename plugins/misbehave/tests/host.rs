@@ -135,3 +135,23 @@ fn fault_a_flood_holds_nobody_else_up() {
     assert_eq!((ups(&all, 0), ups(&all, 1)), (1, 1));
     host.finish(Duration::from_secs(2));
 }
+
+#[test]
+fn an_anchor_goes_to_those_who_asked_for_it_and_to_nobody_else() {
+    let (host, events) = start("anchors");
+    let both_up =
+        |all: &[HostEvent]| all.iter().filter(|e| matches!(e, HostEvent::Up { .. })).count() == 2;
+    until(&events, both_up);
+    host.anchor("41:abcd");
+    let told = |e: &HostEvent| match e {
+        HostEvent::Trouble { adapter, trouble } => Some((*adapter, trouble.words.clone())),
+        _ => None,
+    };
+    let all = until(&events, |all| all.iter().any(|e| told(e).is_some()));
+    let [(0, words)] = &all.iter().filter_map(told).collect::<Vec<_>>()[..] else {
+        panic!("{all:?}")
+    };
+    assert!(words.contains("'site':'test'") && words.contains("'anchor':'41:abcd'"), "{words}");
+    host.finish(Duration::from_secs(2));
+    assert!(downs(&events.try_iter().collect::<Vec<_>>()).is_empty());
+}

@@ -2,11 +2,13 @@
 //! no lease and decides nothing: the device does the first, the daemon the second.
 
 use std::cell::RefCell;
+use std::fs::OpenOptions;
+use std::io::Write;
 use std::rc::Rc;
 
 use sdk::protocol::{
-    Drive, Introduce, Introduced, LeaseHolder, Point, PointKind, Quality, Reading, RestAction,
-    RestCause, RestSet, Severity, Trouble,
+    Anchor, Drive, Introduce, Introduced, LeaseHolder, Point, PointKind, Quality, Reading,
+    RestAction, RestCause, RestSet, Severity, Trouble, feature,
 };
 use sdk::{Adapter, BootClock, Outbox};
 use units::{Mono, Span};
@@ -64,6 +66,7 @@ impl Adapter for Bridge {
             name: "simulated-plant".to_owned(),
             version: env!("CARGO_PKG_VERSION").to_owned(),
             points,
+            features: vec![feature::ANCHORS.to_owned()],
         })
     }
     fn drive(&mut self, d: &Drive) -> Result<(), String> {
@@ -90,6 +93,17 @@ impl Adapter for Bridge {
         let mut readings = self.desk.borrow_mut().readings();
         readings.retain(|r| points.contains(&r.point));
         readings
+    }
+    /// Into the plant's own folder, which the daemon never touches.
+    fn anchored(&mut self, anchor: &Anchor) {
+        let mut desk = self.desk.borrow_mut();
+        let Some(station) = desk.station.as_ref() else { return };
+        let file = station.settings().folder.join("anchors");
+        let line = format!("{} {}\n", anchor.site, anchor.anchor);
+        let kept = OpenOptions::new().create(true).append(true).open(&file);
+        if let Err(e) = kept.and_then(|mut f| f.write_all(line.as_bytes())) {
+            desk.trouble(None, format!("an anchor could not be kept in {}: {e}", file.display()));
+        }
     }
     fn tick(&mut self, out: &mut Outbox) {
         let mut desk = self.desk.borrow_mut();

@@ -31,7 +31,9 @@ impl Adapter for Scribe {
             lease_shortest_ms: Some(1),
             rest: Some(rest),
         };
-        Ok(Introduced { name: "scribe".to_owned(), version: "1".to_owned(), points: vec![point] })
+        let features = vec![protocol::feature::ANCHORS.to_owned()];
+        let (name, version) = ("scribe".to_owned(), "1".to_owned());
+        Ok(Introduced { name, version, points: vec![point], features })
     }
     fn drive(&mut self, drive: &Drive) -> Result<(), String> {
         self.note(format!("drive {} {}", drive.point, drive.setpoint));
@@ -42,6 +44,9 @@ impl Adapter for Scribe {
     }
     fn rest(&mut self, point: &str, _: RestAction, cause: RestCause) {
         self.note(format!("rest {point} {cause:?}"));
+    }
+    fn anchored(&mut self, anchor: &Anchor) {
+        self.note(format!("anchor {}", anchor.anchor));
     }
     fn sense(&mut self, _: &[String]) -> Vec<Reading> {
         Vec::new()
@@ -131,4 +136,13 @@ fn what_must_be_refused_is_refused_and_nothing_moves() {
         assert!(line.contains(code), "{code} {line}");
     }
     assert_eq!(done, ["drive gate 20", "rest gate InputEnd"]);
+}
+
+#[test]
+fn an_anchor_is_handed_on_once_introduced_and_needs_no_answer() {
+    let anchor = r#"{"jsonrpc":"2.0","method":"anchor","params":{"site":"s","anchor":"7:ab"}}"#;
+    let lines = [anchor.to_owned(), INTRODUCE.to_owned(), anchor.to_owned()];
+    let (done, answers) = session(&lines, Duration::from_millis(50));
+    assert_eq!(done.iter().filter(|d| *d == "anchor 7:ab").count(), 1, "{done:?}");
+    assert_eq!(answers.len(), 1, "{answers:?}");
 }
