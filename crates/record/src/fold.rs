@@ -52,7 +52,7 @@ const JUMP: Span = Span::days(1);
 const HELD_AFTER_REST: Span = Span::hours(1);
 
 /// What the rows so far add up to. Feed it as the rows stream by; it keeps no row.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub struct Fold {
     /// The assets of the site file as it is now.
     site: Vec<(String, AssetId)>,

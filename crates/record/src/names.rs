@@ -59,7 +59,7 @@ impl Names for &Site {
 
 /// Every name is good and gets the next index: for reading rows without the site file, or with one
 /// that has changed since.
-#[derive(Default, Debug)]
+#[derive(Clone, Default, Debug)]
 pub(crate) struct Gathered {
     assets: Vec<String>,
     signals: Vec<String>,
