@@ -132,7 +132,7 @@ fn command(kind: u16, r: &mut Reader<'_>) -> Result<Entry, RecordError> {
     })
 }
 
-fn outcome(r: &mut Reader<'_>) -> Result<Outcome, RecordError> {
+pub(crate) fn outcome(r: &mut Reader<'_>) -> Result<Outcome, RecordError> {
     match r.u8("outcome")? {
         1 => Ok(Outcome::Accepted),
         2 => r.text("why").map(Outcome::Refused),

@@ -2,7 +2,9 @@
 
 mod any;
 mod entries;
+mod events;
 mod fold;
+mod products;
 mod refused;
 mod snapshot;
 

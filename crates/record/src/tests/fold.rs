@@ -202,7 +202,7 @@ fn an_intent_is_open_until_rest_shut_or_stop() {
     let rest = Entry::Rest { asset: GATE, action: RestAction::Close, cause: String::new() };
     let stopping = Entry::Stopping { why: String::new() };
     let open = intent(GATE, 1, OPEN);
-    assert_eq!(open_after(&[open.clone()]), [1]);
+    assert_eq!(open_after(core::slice::from_ref(&open)), [1]);
     assert_eq!(open_after(&[open.clone(), outcome(GATE, 1, Outcome::Accepted)]), [1]);
     assert_eq!(open_after(&[open.clone(), confirmed(GATE, 1)]), [1], "it stands open");
     assert_eq!(open_after(&[open.clone(), rest.clone()]), [] as [u64; 0]);
