@@ -158,6 +158,18 @@ pub const ROWS: &[Wrong] = wrong! {
     "the nodal rule is not said" SITE: "nodal = \"mid-year\"\n" => "";
         "S006" at "[port]", "(nothing)"; "must say `nodal`; there is no default"; "mid-year"
 
+    // The record.
+    "a crontab line of five fields" SITE: "when = \"0 30 5 * * *\"" => "when = \"30 5 * * *\"";
+        "S039" at "when = \"30 5", "\"30 5 * * *\""; "it has 5 fields instead of six"; "second, minute, hour"
+    "a duty each second" SITE: "when = \"0 30 5 * * *\"" => "when = \"* * * * * *\"";
+        "S039" at "when = \"* *", "\"* * * * * *\""; "more than once a minute"; "0 30 2 * * MON"
+    "a day that never comes" SITE: "when = \"0 30 5 * * *\"" => "when = \"0 30 5 31 6 *\"";
+        "S039" at "when = \"0 30 5 31", "\"0 30 5 31 6 *\""; "no day fits it"; "weekday"
+    "an unknown duty" SITE: "duty = \"summary\"" => "duty = \"sumary\"";
+        "S011" at "duty = \"sumary", "\"sumary\""; "one of"; "did you mean \"summary\""
+    "segments kept for a day" SITE: "segments_for = \"2200 d\"" => "segments_for = \"1 d\"";
+        "S015" at "segments_for", "\"1 d\""; "from 7 d"; "check"
+
     // The licence.
     "a clause number twice" LICENCE: "number = \"2.6\"" => "number = \"2.5\"";
         "L001" at "number = \"2.5\"", "\"2.5\""; "clause 2.5 must stand once"; "as the regulator does"

@@ -17,6 +17,8 @@ use serde_json::Value;
 const LINE_MAX: u64 = 64 * 1024;
 /// Longest wait for the daemon's loop, or for a peer to finish its line.
 const WAIT: Duration = Duration::from_secs(10);
+/// The same for what the journal does in its own time: a large backup, say.
+const WAIT_KEEP: Duration = Duration::from_secs(900);
 
 #[derive(Serialize, Deserialize, Clone, Debug)]
 #[serde(tag = "ask", rename_all = "kebab-case", deny_unknown_fields)]
@@ -26,6 +28,28 @@ pub enum Request {
     Why { asset: String, at: Option<String> },
     Rows { from: u64, limit: u64 },
     Act { by: String, reason: String, act: ActRequest },
+    Keep(KeepRequest),
+}
+
+impl Request {
+    const fn wait(&self) -> Duration {
+        match self {
+            Self::Keep(_) => WAIT_KEEP,
+            _ => WAIT,
+        }
+    }
+}
+
+/// What a person may ask of the journal. Days count from 1970-01-01, UTC.
+#[derive(Serialize, Deserialize, Clone, Debug)]
+#[serde(tag = "keep", rename_all = "kebab-case", deny_unknown_fields)]
+pub enum KeepRequest {
+    Seal,
+    Anchor,
+    Backup,
+    Verify,
+    Hold { from_day: i32, to_day: i32, by: String, reason: String },
+    Lift { from_day: i32, to_day: i32, by: String, reason: String },
 }
 
 #[derive(Serialize, Deserialize, Clone, Debug)]
@@ -102,15 +126,16 @@ fn asked<T: From<Asked>>(stream: &UnixStream, to: &Sender<T>) -> Result<Response
     let mut line = String::new();
     BufReader::new(stream.take(LINE_MAX)).read_line(&mut line)?;
     let request: Request = serde_json::from_str(&line).context("this is no request")?;
+    let wait = request.wait();
     let (reply, answer) = sync_channel(1);
     to.send(T::from(Asked { request, peer, reply })).map_err(|_| anyhow!("stopping"))?;
-    answer.recv_timeout(WAIT).context("the daemon did not answer in time")
+    answer.recv_timeout(wait).context("the daemon did not answer in time")
 }
 
 /// Asks the daemon that listens at `path`. `None` if none does.
 pub fn ask(path: &Path, request: &Request) -> Result<Option<Response>> {
     let Ok(mut stream) = UnixStream::connect(path) else { return Ok(None) };
-    stream.set_read_timeout(Some(WAIT * 2))?;
+    stream.set_read_timeout(Some(request.wait() * 2))?;
     stream.write_all((serde_json::to_string(request)? + "\n").as_bytes())?;
     let mut line = String::new();
     BufReader::new(stream).read_line(&mut line)?;

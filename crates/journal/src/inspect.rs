@@ -109,8 +109,8 @@ pub fn rows(dir: &Path, filter: &Filter) -> Result<Vec<Row>, JournalError> {
 /// are still there, then from what waits to be sealed.
 pub fn events(dir: &Path, visit: &mut dyn FnMut(&[u8])) -> Result<(), JournalError> {
     each_segment(dir, &mut |segment| segment.events(visit))?;
-    each_unsealed(dir, &mut |events, _| {
-        let mut taker = Taker(events);
+    each_unsealed(dir, &mut |inputs| {
+        let mut taker = Taker(inputs.events);
         while let Some(event) = taker.blob() {
             visit(event);
         }
@@ -124,8 +124,8 @@ pub fn minutes(dir: &Path, visit: &mut dyn FnMut(Minute)) -> Result<(), JournalE
         segment.minutes()?.into_iter().for_each(&mut *visit);
         Some(())
     })?;
-    each_unsealed(dir, &mut |_, minutes| {
-        take_minutes(minutes)?.into_iter().for_each(&mut *visit);
+    each_unsealed(dir, &mut |inputs| {
+        take_minutes(inputs.minutes)?.into_iter().for_each(&mut *visit);
         Some(())
     })
 }
@@ -153,9 +153,15 @@ fn each_segment(
     Ok(())
 }
 
+/// One row of what waits to be sealed.
+struct Inputs<'a> {
+    events: &'a [u8],
+    minutes: &'a [u8],
+}
+
 fn each_unsealed(
     dir: &Path,
-    visit: &mut dyn FnMut(&[u8], &[u8]) -> Option<()>,
+    visit: &mut dyn FnMut(&Inputs<'_>) -> Option<()>,
 ) -> Result<(), JournalError> {
     let evidence = Evidence::open_to_read(dir)?;
     if evidence.form < forms::WITH_PACKS {
@@ -167,7 +173,7 @@ fn each_unsealed(
     let mut rows = statement.query([]).map_err(sql)?;
     while let Some(row) = rows.next().map_err(sql)? {
         let blob = |c: usize| row.get_ref(c).and_then(|v| Ok(v.as_blob()?)).map_err(sql);
-        if visit(blob(1)?, blob(2)?).is_none() {
+        if visit(&Inputs { events: blob(1)?, minutes: blob(2)? }).is_none() {
             let no: i64 = row.get(0).map_err(sql)?;
             return Err(JournalError::Inputs { no });
         }

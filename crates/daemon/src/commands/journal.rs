@@ -5,6 +5,7 @@ use clap::{Args, Subcommand};
 use serde_json::Value;
 use units::Utc;
 
+use super::keep;
 use crate::cli::{Exit, SiteArgs};
 use crate::control::{Request, Response, ask};
 use crate::paths;
@@ -18,8 +19,10 @@ pub struct JournalArgs {
 
 #[derive(Subcommand, Debug)]
 pub enum JournalAct {
-    /// Reads the whole chain and names the first bad row
-    Verify(SiteArgs),
+    /// Reads the whole chain, the segments and the anchors, and names the first bad row
+    Verify(keep::VerifyArgs),
+    #[command(flatten)]
+    Keep(keep::KeepAct),
     /// Rows, one a line
     Query {
         #[command(flatten)]
@@ -44,36 +47,14 @@ pub enum JournalAct {
 
 pub fn journal(args: &JournalArgs) -> Result<Exit> {
     match &args.act {
-        JournalAct::Verify(site) => verify(site),
+        JournalAct::Verify(args) => keep::verify(args),
+        JournalAct::Keep(act) => keep::keep(act),
         JournalAct::Query { site, from, limit, kind, subject, since } => {
             let since = since.as_deref().map(Utc::parse).transpose()?;
             let wanted = Wanted { kind: kind.as_deref(), subject: subject.as_deref(), since };
             query(site, *from, *limit, &wanted)
         }
     }
-}
-
-fn verify(args: &SiteArgs) -> Result<Exit> {
-    let dir = args.state_dir();
-    let mut last = 0;
-    let mut progress = |done: u64, total: u64| {
-        let percent = (done * 100).checked_div(total).unwrap_or(100);
-        if percent >= last + 10 {
-            last = percent;
-            eprintln!("{percent} % ({done} of {total} rows)");
-        }
-    };
-    match journal::verify(&dir, &mut progress) {
-        Ok(v) if args.json => {
-            say!("{}", serde_json::json!({ "rows": v.rows, "head": v.head_hex }));
-        }
-        Ok(v) => say!("{} rows, the chain holds; head {}", v.rows, v.head_hex),
-        Err(e) => {
-            eprintln!("error: {:#}", anyhow::Error::from(e));
-            return Ok(Exit::Findings);
-        }
-    }
-    Ok(Exit::Done)
 }
 
 struct Wanted<'a> {

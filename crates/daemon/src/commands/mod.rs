@@ -3,6 +3,7 @@
 pub mod check;
 pub mod explain;
 pub mod journal;
+pub mod keep;
 pub mod now;
 pub mod order;
 pub mod plan;
@@ -14,6 +15,7 @@ pub mod windows;
 use std::path::Path;
 
 use anyhow::{Result, bail};
+use indicatif::{ProgressBar, ProgressStyle};
 use model::{Forecast, Site};
 use serde::de::DeserializeOwned;
 use units::{Span, Utc, Window};
@@ -56,6 +58,14 @@ pub fn forecast(site: &Site, span: &Window) -> Result<Forecast> {
         );
     };
     Ok(nowcast::forecast(site, as_of, wide)?)
+}
+
+/// A bar on a terminal, nothing elsewhere.
+pub fn progress(what: &'static str) -> ProgressBar {
+    let bar = ProgressBar::no_length();
+    let style = ProgressStyle::with_template("{msg} {wide_bar} {human_pos}/{human_len} {eta}");
+    bar.set_style(style.expect("the template is one"));
+    bar.with_message(what)
 }
 
 /// Asks the running daemon; without one, says how to start it.

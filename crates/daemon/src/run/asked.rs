@@ -9,8 +9,8 @@ use record::Row;
 use serde::Serialize;
 use units::Utc;
 
-use super::acts;
 use super::shell::Shell;
+use super::{acts, keeping};
 use crate::control::{Asked, Request, Response};
 use crate::show::{WhyView, now_view, plan_view, why_planned, why_view};
 
@@ -33,6 +33,7 @@ pub fn answer(shell: &mut Shell, asked: Asked) -> Result<()> {
             let limit = usize::try_from(limit).unwrap_or(ROWS_MOST).min(ROWS_MOST);
             rows(shell, from, limit, reply, |rows| to_json(&rows));
         }
+        Request::Keep(what) => return keeping::asked(shell, what, reply),
         Request::Act { by, reason, act } => {
             let site = shell.parts.site.clone();
             match acts::checked(&site, by, reason, peer, &act) {

@@ -1,6 +1,6 @@
 //! What recurs by the clock on the wall, and what the journal is then told to do.
 
-use std::path::PathBuf;
+use std::path::Path;
 
 use anyhow::{Context, Result};
 use model::{DutyKind, Keeping, Site};
@@ -27,7 +27,8 @@ impl Duties {
     pub fn new(site: &Site, now: Utc) -> Result<Self> {
         let due = |d: &model::Duty| {
             let schedule = Schedule::new(&d.when, site.zone.name(), d.in_both_passes);
-            let schedule = schedule.map_err(anyhow::Error::msg).context("a duty of the site file")?;
+            let schedule =
+                schedule.map_err(anyhow::Error::msg).context("a duty of the site file")?;
             Ok(Due { kind: d.kind, next: schedule.next(now), schedule })
         };
         let list = site.keeping.duties.iter().map(due).collect::<Result<_>>()?;
@@ -58,8 +59,17 @@ pub fn day(at: Utc) -> i32 {
     i32::try_from(day).unwrap_or(i32::MAX)
 }
 
+/// What a duty is done by.
+pub struct About<'a> {
+    pub keeping: &'a Keeping,
+    pub state_dir: &'a Path,
+    /// The secret key of signed anchors.
+    pub key: Option<[u8; 32]>,
+}
+
 /// The tasks of the journal that a duty stands for.
-pub fn tasks(kind: DutyKind, keeping: &Keeping, now: Utc, key: Option<[u8; 32]>) -> Vec<journal::Task> {
+pub fn tasks(kind: DutyKind, now: Utc, about: &About<'_>) -> Vec<journal::Task> {
+    let &About { keeping, state_dir, key } = about;
     use journal::Task;
     let today = day(now);
     match kind {
@@ -70,7 +80,7 @@ pub fn tasks(kind: DutyKind, keeping: &Keeping, now: Utc, key: Option<[u8; 32]>)
         ],
         DutyKind::Anchor => vec![Task::Anchor { key }],
         DutyKind::Backup => {
-            let to = keeping.backup_to.as_ref().map(PathBuf::from);
+            let to = keeping.backup_to.as_ref().map(|to| state_dir.join(to));
             let backup = |to| Task::Backup { to, keep: keeping.backups };
             to.map(backup).into_iter().collect()
         }

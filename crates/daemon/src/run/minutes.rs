@@ -40,10 +40,14 @@ fn reading(signal: &Signal, v: &Validated) -> MinuteReading {
     let steps = v.good.map(|g| (g.value * scale).round());
     let quality = match v.quality {
         Quality::Good => 0,
-        Quality::Suspect => 1,
-        Quality::Bad => 2,
-        Quality::Stale => 3,
-        Quality::Missing => 4,
+        Quality::Stale => 1,
+        Quality::Missing => 2,
+        Quality::NotANumber => 3,
+        Quality::OutOfRange => 4,
+        Quality::TooFast => 5,
+        Quality::Frozen => 6,
+        Quality::BadAtSource => 7,
+        Quality::FromTheFuture => 8,
     };
     // Beyond 2^31 steps there is no signal of ours; `as` stops at the ends.
     MinuteReading { signal: signal.name.clone(), steps: steps.map(|s| s as i32), exponent, quality }

@@ -2,7 +2,10 @@
 
 mod acts;
 mod asked;
+mod duties;
 mod input;
+mod keeping;
+mod minutes;
 mod open;
 mod plant_events;
 mod shell;
@@ -13,6 +16,8 @@ use anyhow::Result;
 
 use crate::cli::{Exit, RunArgs};
 
+pub use duties::day;
+pub use keeping::secret_key;
 pub use workers::work;
 
 /// Runs until told to stop. Every start is observe.

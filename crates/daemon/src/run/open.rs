@@ -11,12 +11,13 @@ use std::time::Duration;
 use anyhow::{Context, Result};
 use engine::{Carried, Config, PermitLife, State};
 use host::{AdapterSpec, Host, HostEvent};
-use journal::Journal;
+use journal::{Journal, JournalError, Opening, Task};
 use model::{Adapter, AdapterProgram, Site, Term};
-use record::Fold;
+use record::{Fold, Note};
 use units::Utc;
 
 use super::input::Input;
+use super::keeping::{self, Keeping};
 use super::shell::{Parts, Shell};
 use super::workers;
 use crate::cli::RunArgs;
@@ -34,14 +35,20 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
     fs::create_dir_all(&state_dir)
         .with_context(|| format!("making the state folder {}", state_dir.display()))?;
     let clock = clock(args, &site, &state_dir)?;
-    let mut fold = Fold::new(&site);
-    let journal = Journal::open(&state_dir, &mut |row| fold.push(&row))
+    let (journal, fold, whole) = record_so_far(&state_dir, &site)
         .with_context(|| format!("opening the journal in {}", state_dir.display()))?;
-    let mut carried: Carried = fold.finish();
+    let mut carried: Carried = fold.clone().finish();
     let heartbeat = state_dir.join(site.settings.heartbeat_file.as_deref().unwrap_or("heartbeat"));
     carried.last_seen = carried.last_seen.max(last_beat(&heartbeat));
     let term = Term(journal.next_term());
-    tracing::info!(term = term.0, rows = journal.rows(), "journal verified");
+    let rows = journal.rows();
+    tracing::info!(
+        term = term.0,
+        rows,
+        "journal verified{}",
+        if whole { "" } else { ", the rest follows" }
+    );
+    let lifted = journal.lifted_from();
     let (to, inbox) = channel::<Input>();
     let (tokens_to, tokens) = sync_channel(HOST_EVENTS);
     let site = Arc::new(site);
@@ -62,7 +69,30 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
     };
     control::listen(&paths::socket(&state_dir), to.clone())?;
     signals(to)?;
-    Ok(Shell::new(parts, carried))
+    let keeping = Keeping::new(&parts.site, &args.site.site, state_dir, clock.utc())?;
+    let mut shell = Shell::new(parts, carried, keeping, fold, rows);
+    if let Some(from) = lifted {
+        shell.submit_alone(vec![Note::Migrated { from, to: journal::FORM }])?;
+    }
+    if !whole {
+        keeping::start(&shell, Task::Verify)?;
+    }
+    Ok(shell)
+}
+
+/// The journal, what its rows add up to, and whether all of them have been verified: from the last
+/// snapshot on, if there is one that reads, and else from the first row.
+fn record_so_far(dir: &Path, site: &Site) -> Result<(Journal, Fold, bool), JournalError> {
+    let opening = Opening::begin(dir)?;
+    let kept = opening.last_of_kind(record::kind::SNAPSHOT)?.and_then(|row| {
+        match record::decode_note(&row).ok()? {
+            Note::Snapshot { of_seq, bytes } => Some((of_seq, Fold::restore(site, &bytes).ok()?)),
+            _ => None,
+        }
+    });
+    let (after, mut fold) = kept.unwrap_or_else(|| (0, Fold::new(site)));
+    let journal = opening.walk(after, &mut |row| fold.push(&row))?;
+    Ok((journal, fold, after == 0))
 }
 
 /// When the last life of the daemon was last well: an outage is counted from here, since a quiet

@@ -9,13 +9,14 @@ use std::time::Duration;
 use anyhow::Result;
 use engine::{Carried, ClockTrust, Effects, Event, Job, Severity, Stamp, State, step};
 use host::{Host, HostEvent, RestPoint};
-use journal::{Batch, Handle, Reply, Seen};
+use journal::{Batch, Handle, Reply};
 use model::{AssetId, RestAction, Site, Term};
 use protocol::RestCause;
-use record::Intent;
+use record::{Fold, Intent, Note, Row};
 use units::Mono;
 
 use super::input::Input;
+use super::keeping::{self, Keeping};
 use super::{asked, plant_events, speak};
 use crate::cli::Exit;
 use crate::clock::{Clock, Watch};
@@ -48,6 +49,10 @@ pub struct Shell {
     waiting: VecDeque<Option<(SyncSender<Response>, Response)>>,
     welcomed: bool,
     beat_at: Mono,
+    pub(super) keeping: Keeping,
+    /// What the rows so far add up to, for the next start.
+    fold: Fold,
+    folded: u64,
 }
 
 /// The longest that the loop sleeps, in real time: the heartbeat and the clock's watch.
@@ -56,7 +61,7 @@ const TURN: Duration = Duration::from_secs(1);
 const STOP_WITHIN: Duration = Duration::from_secs(20);
 
 impl Shell {
-    pub fn new(parts: Parts, carried: Carried) -> Self {
+    pub fn new(parts: Parts, carried: Carried, keeping: Keeping, fold: Fold, folded: u64) -> Self {
         Self {
             parts,
             carried: Some(carried),
@@ -67,6 +72,9 @@ impl Shell {
             waiting: VecDeque::new(),
             welcomed: false,
             beat_at: Mono::ZERO,
+            keeping,
+            fold,
+            folded,
         }
     }
 
@@ -88,6 +96,7 @@ impl Shell {
                 self.feed(Event::Wake)?;
             }
             self.beat();
+            keeping::turn(&mut self)?;
         }
     }
 
@@ -170,6 +179,7 @@ impl Shell {
             Reply::Acked(acked) => {
                 for row in &acked.rows {
                     speak::row(row, self.parts.rows);
+                    self.took(row);
                 }
                 if let Some(Some((to, response))) = self.waiting.pop_front() {
                     let _ = to.send(response);
@@ -185,9 +195,9 @@ impl Shell {
                 }
                 Ok(())
             }
-            Reply::Lost { why } => self.feed(Event::JournalLost { why }),
-            Reply::Back { .. } => self.feed(Event::JournalBack),
-            Reply::Done(_) => Ok(()),
+            Reply::Lost { why } => keeping::lost(self, why),
+            Reply::Back { rows_kept } => keeping::back(self, rows_kept),
+            Reply::Done(done) => keeping::done(self, done),
         }
     }
 
@@ -204,9 +214,11 @@ impl Shell {
     ) -> Result<()> {
         self.seq += 1;
         let stamp = self.stamp();
+        self.keeping.event(&stamp, &event, &self.parts.site, self.parts.clock.speed());
         step(&mut self.parts.state, &stamp, event, &mut self.effects);
         self.rests();
         self.renewals();
+        self.keeping.minute(&self.parts.state, stamp.utc);
         self.wake_at = self.effects.wake_at.or(self.wake_at);
         for notice in self.effects.notices.drain(..) {
             match notice.severity {
@@ -260,10 +272,33 @@ impl Shell {
         let drafts = self.effects.records.drain(..).map(|e| record::encode(&e, site)).collect();
         let intents = self.effects.orders.drain(..).map(|o| Intent::new(o.permit, site)).collect();
         let (utc, boot) = (stamp.utc, stamp.boot);
-        let (term, seen) = (stamp.term.0, Seen::default());
+        let (term, seen) = (stamp.term.0, self.keeping.take_seen());
         self.parts.journal.submit(Batch { term, utc, boot, drafts, intents, seen })?;
         self.waiting.push_back(waits);
         Ok(())
+    }
+
+    /// Notes of the shell's own, and what was seen until now.
+    pub(super) fn submit_alone(&mut self, notes: Vec<Note>) -> Result<()> {
+        let Stamp { term, utc, boot, .. } = self.stamp();
+        let drafts = notes.iter().map(record::encode_note).collect();
+        let (intents, seen) = (Vec::new(), self.keeping.take_seen());
+        let batch = Batch { term: term.0, utc, boot, drafts, intents, seen };
+        self.parts.journal.submit(batch)?;
+        self.waiting.push_back(None);
+        Ok(())
+    }
+
+    /// A committed row, for the next start.
+    pub(super) fn took(&mut self, row: &Row) {
+        self.fold.push(row);
+        self.folded = row.seq;
+    }
+
+    /// What the rows so far add up to, so that the next start need not read them.
+    pub(super) fn snapshot(&mut self) -> Result<()> {
+        let (of_seq, bytes) = (self.folded, self.fold.snapshot());
+        self.submit_alone(vec![Note::Snapshot { of_seq, bytes }])
     }
 
     /// Assets to rest, adapters ended, journal closed.
