@@ -10,7 +10,7 @@ use crate::scenarios::tarrow::tarrow;
 
 /// Written by the version that knew form 1: 244 rows of one simulated day at Tarrow Works, with a
 /// person's acts, 52 commands and a clean stop.
-const FORM_1: &[u8] = include_bytes!("v1/evidence.sqlite");
+const FORM_1: &[u8] = include_bytes!("v1/evidence-form-1.db");
 /// As that version's `journal verify` printed it.
 const HEAD: &str = "616b43dbf621fb38e9a99f94585b06395392109fb353afca642c5c02e949c7cd";
 
@@ -35,7 +35,11 @@ fn compat_v1_a_file_of_form_1_is_read_as_it_is() {
     let mut events = 0;
     journal::events(dir.path(), &mut |_| events += 1).unwrap();
     assert_eq!(events, 0, "form 1 kept none");
-    assert_eq!(fs::read(dir.path().join(journal::FILE_NAME)).unwrap(), FORM_1, "not a byte changed");
+    assert_eq!(
+        fs::read(dir.path().join(journal::FILE_NAME)).unwrap(),
+        FORM_1,
+        "not a byte changed"
+    );
 }
 
 #[test]

@@ -4,4 +4,5 @@ mod journal;
 mod site;
 mod site_good;
 mod site_rows;
+mod tampering;
 mod thirty_days;

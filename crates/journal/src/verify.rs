@@ -7,10 +7,10 @@ use std::path::Path;
 use record::{Note, Row, kind};
 
 use crate::anchor::{Anchor, is_signed};
-use crate::chain::{Head, Walk};
+use crate::chain::{self, Head, Walk};
 use crate::file::Evidence;
 use crate::seal::SEGMENTS;
-use crate::{JournalError, segment};
+use crate::{JournalError, forms, segment};
 
 /// What a whole verification found.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -68,11 +68,14 @@ pub fn verify_with(
         }
     }
     seen.end(walk.head())?;
-    seen.segments(dir)?;
+    seen.segments(dir, &evidence)?;
     Ok(seen.found)
 }
 
 const PORTION: usize = 4096;
+/// Kinds of rows that say something of what is outside them.
+const TELLING: [u16; 5] =
+    [kind::SEALED, kind::SEGMENT_DELETED, kind::ANCHORED, kind::LEGAL_HOLD, kind::HOLD_LIFTED];
 
 /// What the rows say of things outside them.
 struct Seen {
@@ -82,6 +85,8 @@ struct Seen {
     previous: Head,
     /// Segments that must be there.
     standing: BTreeMap<String, [u8; 32]>,
+    /// Days that a legal hold keeps, the last one too.
+    held: Vec<(i32, i32)>,
     fault: Option<JournalError>,
 }
 
@@ -96,8 +101,8 @@ impl Seen {
             anchors_signed: 0,
         };
         let kept = checks.anchors.iter().map(|a| (a.seq, a.hash)).collect();
-        let (previous, standing) = (Head::NONE, BTreeMap::new());
-        Self { found, key: checks.key, kept, previous, standing, fault: None }
+        let (previous, standing, held) = (Head::NONE, BTreeMap::new(), Vec::new());
+        Self { found, key: checks.key, kept, previous, standing, held, fault: None }
     }
 
     fn row(&mut self, row: &Row) {
@@ -112,7 +117,7 @@ impl Seen {
             let why = "the record has another row there than when it was kept".to_owned();
             return Err(JournalError::Anchor { seq: row.seq, why });
         }
-        if ![kind::SEALED, kind::SEGMENT_DELETED, kind::ANCHORED].contains(&row.kind) {
+        if !TELLING.contains(&row.kind) {
             return Ok(());
         }
         let bad = |why: String| JournalError::FirstBad { seq: row.seq, why };
@@ -120,9 +125,17 @@ impl Seen {
             Note::Sealed { file, digest, .. } => {
                 self.standing.insert(file, digest);
             }
-            Note::SegmentDeleted { file, .. } => {
+            Note::SegmentDeleted { day, file, .. } => {
+                if self.held.iter().any(|(from, to)| (*from..=*to).contains(&day)) {
+                    return Err(bad("a legal hold kept what it says was deleted".to_owned()));
+                }
                 self.standing.remove(&file);
                 self.found.segments_deleted += 1;
+            }
+            Note::LegalHold { from_day, to_day, .. } => self.held.push((from_day, to_day)),
+            Note::HoldLifted { from_day, to_day, .. } => {
+                let lifted = self.held.iter().position(|days| *days == (from_day, to_day));
+                lifted.map(|no| self.held.remove(no));
             }
             Note::Anchored { of_seq, hash, signature } => {
                 if (of_seq, hash) != (self.previous.seq, self.previous.hash) {
@@ -148,6 +161,27 @@ impl Seen {
         self.fault.take().map_or(Ok(()), Err)
     }
 
+    /// The tables that retention goes by are what the rows say.
+    fn tables(&self, evidence: &Evidence) -> Result<(), JournalError> {
+        if evidence.form < forms::WITH_PACKS {
+            return Ok(());
+        }
+        let sql = |e| evidence.sql("reading its own tables", e);
+        let text = "SELECT file, digest FROM segments WHERE deleted_seq IS NULL";
+        let mut statement = evidence.db.prepare(text).map_err(sql)?;
+        let rows = statement.query_map([], |r| Ok((r.get(0)?, chain::array(r, 1)?)));
+        let listed: BTreeMap<String, [u8; 32]> = rows.and_then(Iterator::collect).map_err(sql)?;
+        let text = "SELECT from_day, to_day FROM holds WHERE lifted_seq IS NULL ORDER BY seq";
+        let mut statement = evidence.db.prepare(text).map_err(sql)?;
+        let rows = statement.query_map([], |r| Ok((r.get(0)?, r.get(1)?)));
+        let holds: Vec<(i32, i32)> = rows.and_then(Iterator::collect).map_err(sql)?;
+        if listed != self.standing || holds != self.held {
+            let why = "its list of segments or holds is not what the rows say".to_owned();
+            return Err(JournalError::FirstBad { seq: self.found.rows + 1, why });
+        }
+        Ok(())
+    }
+
     fn end(&mut self, head: Head) -> Result<(), JournalError> {
         (self.found.rows, self.found.head_hex) = (head.seq, head.hex());
         match self.kept.keys().next() {
@@ -159,7 +193,8 @@ impl Seen {
         }
     }
 
-    fn segments(&mut self, dir: &Path) -> Result<(), JournalError> {
+    fn segments(&mut self, dir: &Path, evidence: &Evidence) -> Result<(), JournalError> {
+        self.tables(evidence)?;
         for (file, digest) in &self.standing {
             let path = dir.join(SEGMENTS).join(file);
             let wrong = |why: String| JournalError::Segment { path: path.clone(), why };

@@ -219,6 +219,31 @@ fn retention_deletes_what_no_hold_keeps_and_says_so() {
 }
 
 #[test]
+fn fault_a_hold_or_a_segment_taken_off_the_lists_is_found() {
+    let dir = tempfile::tempdir().unwrap();
+    let desk = Desk::open(dir.path());
+    desk.write(FIRST_DAY, 1, 10);
+    desk.done(FIRST_DAY + 1, Task::Seal { before_day: FIRST_DAY + 1 });
+    let (by, reason) = ("A. Reader".to_owned(), "inquiry".to_owned());
+    desk.done(FIRST_DAY, Task::Hold { from_day: FIRST_DAY, to_day: FIRST_DAY, by, reason });
+    desk.handle.close().unwrap();
+    let file = dir.path().join(journal::FILE_NAME);
+    let good = fs::read(&file).unwrap();
+    for change in ["DELETE FROM holds", "UPDATE holds SET from_day = 0", "DELETE FROM segments"] {
+        db(dir.path()).execute(change, []).unwrap();
+        assert!(verify(dir.path(), &mut |_, _| {}).is_err(), "{change}");
+        fs::write(&file, &good).unwrap();
+    }
+    // With the hold off the list retention deletes; the rows then say that it was not allowed to.
+    db(dir.path()).execute("DELETE FROM holds", []).unwrap();
+    let desk = Desk::open(dir.path());
+    desk.done(FIRST_DAY, Task::Retain { before_day: FIRST_DAY + 1 });
+    desk.handle.close().unwrap();
+    let error = verify(dir.path(), &mut |_, _| {}).unwrap_err();
+    assert!(error.to_string().contains("a legal hold kept"), "{error}");
+}
+
+#[test]
 fn an_anchor_kept_elsewhere_finds_a_record_that_was_cut_or_written_anew() {
     let dir = tempfile::tempdir().unwrap();
     let desk = Desk::open(dir.path());
