@@ -36,6 +36,17 @@ pub fn check(dir: &Path, acked: u64, heard: &Heard) -> Result<String, String> {
     Ok(format!("{} rows, {acked} acknowledged", found.rows))
 }
 
+/// With not a block left: it opens, and everything is there. Nothing can be added.
+pub fn opens_full(dir: &Path, acked: u64, heard: &Heard) -> Result<String, String> {
+    let acked = acked.max(heard.acked.keys().next_back().copied().unwrap_or(0));
+    untouched(dir, acked)?;
+    let (found, journal) = walked(dir, heard)?;
+    drop(journal);
+    found.held_to(heard)?;
+    seen(dir, heard)?;
+    Ok(format!("{} rows, {acked} acknowledged", found.rows))
+}
+
 fn said(e: &JournalError) -> String {
     load::in_words(e)
 }
@@ -64,8 +75,8 @@ struct Found {
     backup: Option<(String, u64, [u8; 32])>,
 }
 
-/// Opens it as the daemon does, adds a row, and closes it.
-fn opened(dir: &Path, heard: &Heard) -> Result<Found, String> {
+/// Opens it as the daemon does.
+fn walked(dir: &Path, heard: &Heard) -> Result<(Found, Journal), String> {
     let mut found = Found::default();
     let site = site::sallow();
     let mut unread = None;
@@ -79,6 +90,12 @@ fn opened(dir: &Path, heard: &Heard) -> Result<Found, String> {
         return Err(format!("ROW {why}"));
     }
     found.rows = journal.rows();
+    Ok((found, journal))
+}
+
+/// Opens it, adds a row, and closes it.
+fn opened(dir: &Path, heard: &Heard) -> Result<Found, String> {
+    let (found, journal) = walked(dir, heard)?;
     let term = journal.next_term();
     let (to, replies) = channel::<Reply>();
     let handle = journal.start(to);

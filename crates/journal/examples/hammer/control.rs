@@ -22,8 +22,6 @@ pub enum Durability {
     Early,
     /// Errors are not heard: acknowledged all the same.
     Deaf,
-    /// The index of the WAL in a mapped file, as SQLite has it by itself.
-    Shared,
 }
 
 impl Durability {
@@ -34,7 +32,6 @@ impl Durability {
             "off" => Self::Off,
             "early" => Self::Early,
             "deaf" => Self::Deaf,
-            "shared" => Self::Shared,
             _ => return None,
         })
     }
@@ -77,9 +74,8 @@ fn settled(orders: &Orders) -> rusqlite::Result<Connection> {
         Durability::Off => "OFF",
         _ => "FULL",
     };
-    let locking = if orders.durability == Durability::Shared { "NORMAL" } else { "EXCLUSIVE" };
     db.execute_batch(&format!(
-        "PRAGMA locking_mode={locking}; PRAGMA journal_mode=WAL; PRAGMA synchronous={synchronous};
+        "PRAGMA locking_mode=EXCLUSIVE; PRAGMA journal_mode=WAL; PRAGMA synchronous={synchronous};
          PRAGMA wal_autocheckpoint=0; PRAGMA mmap_size=0;"
     ))?;
     Ok(db)

@@ -4,7 +4,7 @@
 //! ```text
 //! hammer prepare MODE DIR     what a mode begins with, where that is not an empty folder
 //! hammer run MODE DIR [--seed N] [--batches N] [--patience-ms N] [--durability D]
-//! hammer check DIR [--acked N] [--heard FILE]
+//! hammer check DIR [--acked N] [--heard FILE] [--full]
 //! hammer check --batch        lines on standard input: DIR, ACKED, HEARD, LINES (tabs between)
 //! ```
 //! Lines of a run, each written at once: `ACK seq hash8` after the acknowledgement of a row,
@@ -98,7 +98,9 @@ fn checked(args: &[String]) -> Result<u8, String> {
         Some(file) => heard::Heard::read(Path::new(file), usize::MAX)?,
         None => heard::Heard::default(),
     };
-    match check::check(Path::new(dir), acked, &heard) {
+    let full = args.iter().any(|a| a == "--full");
+    let how = if full { check::opens_full } else { check::check };
+    match how(Path::new(dir), acked, &heard) {
         Ok(good) => {
             say(&good);
             Ok(0)
