@@ -1,6 +1,5 @@
 //! What breaks: wrong files, bad adapters, dead processes, full disks, clocks that step.
 
-mod journal;
 mod site;
 mod site_good;
 mod site_rows;
