@@ -148,6 +148,7 @@ fn fault_killed_daemon_adapter_and_a_frozen_level_break_no_rule_and_lose_no_row(
     let mut rig = Rig::new(START, &form.faults, form.speed);
     let killed = drive(&form, &mut rig);
     rig.verify();
+    without_gap(&rig.seen(&site), form.deaths() as u64 + 1);
     let outlet = &site.outlets[0];
     let order = std::iter::once(&outlet.gate).chain(&outlet.pumps);
     let assets: Vec<String> = order.map(|a| site.asset(*a).name.clone()).collect();
@@ -183,6 +184,20 @@ fn fault_killed_daemon_adapter_and_a_frozen_level_break_no_rule_and_lose_no_row(
     if is_long {
         assert!(report.totals.releases >= 50 && share >= 0.95, "{share}");
     }
+}
+
+/// Every term's events were kept from its first on without a gap; a kill may take the last second's.
+fn without_gap(seen: &[(u64, u64)], terms: u64) {
+    let (mut term, mut last) = (0, 0);
+    for &(t, seq) in seen {
+        if t != term {
+            assert_eq!((t, seq), (term + 1, 1), "after event {last} of term {term}");
+        } else {
+            assert_eq!(seq, last + 1, "in term {t}");
+        }
+        (term, last) = (t, seq);
+    }
+    assert_eq!(term, terms, "every life was seen");
 }
 
 fn lines(rows: &[(u64, String)]) -> Vec<Line<'_>> {

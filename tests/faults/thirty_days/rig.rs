@@ -8,6 +8,7 @@ use std::sync::{Arc, Mutex};
 use std::thread;
 use std::time::{Duration, Instant};
 
+use model::Site;
 use oracle::{Event, EventKind, Run, Sample};
 use serde_json::Value;
 use units::{Mono, Utc};
@@ -121,10 +122,26 @@ impl Rig {
         self.printer.take().unwrap().join().unwrap();
         assert!(status.success(), "a clean stop: {status}\n{}", self.log());
     }
+    /// The record holds, and passes through every anchor that the plant was told of.
     pub fn verify(&self) {
-        let out = self.command(&["journal", "verify"], &[]);
+        let kept = self.path("state/plant/anchors");
+        let kept = kept.to_str().expect("a temporary folder's name is text");
+        let out = self.command(&["journal", "verify"], &["--json", "--anchors", kept]);
         let said = String::from_utf8_lossy(&out.stderr);
         assert!(out.status.success(), "journal verify: {said}");
+        let found: Value = serde_json::from_slice(&out.stdout).unwrap();
+        assert!(found["anchors_kept"].as_u64().unwrap() > 20, "{found}");
+        assert!(found["segments"].as_u64().unwrap() > 0, "{found}");
+    }
+    /// Stamps of the events that the engine was told of, in order: term and sequence.
+    pub fn seen(&self, site: &Site) -> Vec<(u64, u64)> {
+        let mut seen = Vec::new();
+        journal::events(&self.path("state"), &mut |bytes| {
+            let (stamp, _) = record::decode_event(bytes, site).unwrap();
+            seen.push((stamp.term.0, stamp.seq));
+        })
+        .unwrap();
+        seen
     }
     /// Every row of the journal: (number, `UTC words`).
     pub fn rows(&self) -> Vec<(u64, String)> {
