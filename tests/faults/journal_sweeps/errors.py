@@ -21,6 +21,8 @@ HOW = ["once", "stay", "all"]
 TOLD_WITHIN_S = 2.0
 # One retry comes 2 s after the loss, and is to fail.
 STAYS_S = 2.5
+# Of each mode, once and longer, in the short form.
+SHORT_RUNS = 30
 # An interrupted call is one that a signal met; signals do not come for ever.
 INTERRUPTIONS = 4
 # Calls that may fail without a word. SQLite syncs the folder beside our own sync of it. A WAL whose
@@ -36,7 +38,7 @@ def run(r):
     tally.expect("deaf")
     ways = collections.Counter()
     # They wait for the retry most of the time.
-    for task, result in r.each(PART, one, _tasks(r), jobs=r.jobs * 16):
+    for task, result in r.each(PART, one, _tasks(r), jobs=r.jobs * 24):
         why, way = result
         _, f = rig.fields(task)
         control = None if f["durability"] == "full" else f["durability"]
@@ -51,14 +53,13 @@ def _tasks(r):
     place = r.here()
     draw = random.Random(r.seed)
     for mode in rig.MODES:
-        seeds = range(r.seed, r.seed + (2 if r.long else 1))
-        for seed in seeds:
-            calls = _calls(place, mode, seed, "full")
-            all_of_mode = list(_faults(mode, seed, "full", calls))
-            most = 4000 if r.long else 150
-            if len(all_of_mode) > most:
-                all_of_mode = draw.sample(all_of_mode, most)
-            yield from all_of_mode
+        all_of_mode = list(_faults(mode, r.seed, "full", _calls(place, mode, r.seed, "full")))
+        once = [t for t in all_of_mode if "how=once" in t]
+        longer = [t for t in all_of_mode if "how=once" not in t]
+        # Every call with every fault; of a large file, and of faults that stay, a sample.
+        most = 1000 if mode in rig.SHARE else len(once)
+        yield from draw.sample(once, min(len(once), most if r.long else SHORT_RUNS))
+        yield from draw.sample(longer, min(len(longer), 1000 if r.long else SHORT_RUNS))
     control = list(_faults("append", r.seed, "deaf", _calls(place, "append", r.seed, "deaf")))
     yield from draw.sample(control, min(len(control), 60))
 

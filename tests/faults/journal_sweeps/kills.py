@@ -10,6 +10,8 @@ import rig
 import tracer
 
 PART = "kills"
+# Of each mode, in the short form.
+SHORT_POINTS = 40
 
 
 def run(r):
@@ -26,19 +28,19 @@ def run(r):
 
 
 def _tasks(r):
-    seeds = range(r.seed, r.seed + (8 if r.long else 1))
+    seeds = range(r.seed, r.seed + (6 if r.long else 1))
     place = r.here()
     draw = random.Random(r.seed)
     for mode in rig.MODES:
         for seed in seeds:
             calls = _count(place, mode, seed, "full")
             points = list(range(1, calls + 1))
-            if not r.long and len(points) > 120:
-                points = sorted(draw.sample(points, 120))
+            if not r.long and len(points) > SHORT_POINTS:
+                points = sorted(draw.sample(points, SHORT_POINTS))
             for at in points:
                 yield rig.words(PART, mode=mode, seed=seed, durability="full", at=at)
             # Killed, and killed again one to four times while it recovers and goes on.
-            for _ in range(200 if r.long else 20):
+            for _ in range(200 if r.long else 8):
                 ats = [draw.randint(1, calls) for _ in range(draw.randint(2, 5))]
                 at = ",".join(map(str, ats))
                 yield rig.words(PART, mode=mode, seed=seed, durability="full", at=at)

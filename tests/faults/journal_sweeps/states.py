@@ -49,7 +49,7 @@ def _tasks(r):
     draw = random.Random(r.seed)
     place = r.here()
     # Runs of each mode and recoveries, states drawn after a call, failed syncs.
-    runs, recoveries, drawn, faults = (16, 16, 8, 400) if r.long else (1, 1, 1, 6)
+    runs, recoveries, drawn, faults = (10, 10, 8, 60) if r.long else (1, 1, 1, 2)
     few = max(1, drawn // 3)
     tasks = []
     for mode in rig.MODES:

@@ -3,6 +3,7 @@
 
     sweep.py PART [--short|--long] [--jobs N] [--seed N]     kills errors states full cuts, or all
     sweep.py again 'TASK'                                    one run once more, as a failure named it
+    sweep.py build                                           builds the hammer, says where it is
 
 One line of JSON a part on standard output, progress on standard error. Ends with 0 good, 1 something
 bad or a control that did not fail, 2 usage, 77 a part could not be run here.
@@ -14,14 +15,16 @@ import json
 import os
 import sys
 
-import rig
+sys.dont_write_bytecode = True
+
+import rig  # noqa: E402
 
 PARTS = ["kills", "errors", "states", "full", "cuts"]
 
 
 def main():
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
-    parser.add_argument("part", choices=PARTS + ["all", "again"])
+    parser.add_argument("part", choices=PARTS + ["all", "again", "build"])
     parser.add_argument("task", nargs="?", help="for `again`: the task in words")
     form = parser.add_mutually_exclusive_group()
     form.add_argument("--short", action="store_true", help="a sample, for each commit (as it is)")
@@ -29,6 +32,9 @@ def main():
     parser.add_argument("--jobs", type=int, default=os.cpu_count())
     parser.add_argument("--seed", type=int, default=1)
     args = parser.parse_args()
+    if args.part == "build":
+        print(rig.hammer())
+        return rig.GOOD
     r = rig.Rig(args.jobs, args.seed, args.long)
     try:
         if args.part == "again":
