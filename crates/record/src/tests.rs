@@ -4,9 +4,11 @@ mod any;
 mod entries;
 mod events;
 mod fold;
+mod intents;
 mod products;
 mod refused;
 mod snapshot;
+mod sums;
 
 use engine::{Entry, Mode};
 use model::{AssetId, Site};
