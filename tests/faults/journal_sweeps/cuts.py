@@ -16,7 +16,7 @@ import rig
 
 PART = "cuts"
 KINDS = ["ext4-ordered-1024", "ext4-ordered-4096", "ext4-writeback-1024", "ext4-writeback-4096"]
-MODES = ["append", "checkpoint", "seal", "retain", "backup", "migrate", "stop"]
+MODES = ["append", "checkpoint", "seal", "retain", "backup", "pack", "migrate", "stop"]
 CONTROLS = ["normal", "off"]
 # So many cuts on the same files; then new ones.
 CUTS_EACH = 12

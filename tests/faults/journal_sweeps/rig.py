@@ -16,8 +16,8 @@ GOOD, BAD, USAGE, NOT_RUN = 0, 1, 2, 77
 
 # The modes of the hammer, those of them that do not begin with an empty folder, and what part of the
 # usual work (one in so many) a mode with a large file gets.
-MODES = ["append", "checkpoint", "seal", "retain", "backup", "pack", "migrate", "stop"]
-PREPARED = ["pack", "migrate"]
+MODES = ["append", "again", "checkpoint", "seal", "retain", "backup", "pack", "migrate", "stop"]
+PREPARED = ["again", "pack", "migrate"]
 SHARE = {"checkpoint": 6, "pack": 40}
 # Room that is taken and given back: nothing that is in it is ever read.
 RESERVE = "/state/reserve"
@@ -98,8 +98,10 @@ class Place:
         state = os.path.join(made, "root", "state")
         if not os.path.isdir(state):
             os.makedirs(state)
+            # `again` goes on where an `append` was killed: there is a WAL.
+            how = ["run", "append"] if mode == "again" else ["prepare", mode]
             with open(os.path.join(made, "out"), "wb") as out:
-                subprocess.run([self.hammer, "prepare", mode, state], stdout=out, check=True)
+                subprocess.run([self.hammer, *how, state], stdout=out, check=True)
         return made
 
     def argv(self, mode, seed=1, batches=6, durability="full", patience_ms=10_000):

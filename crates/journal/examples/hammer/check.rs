@@ -5,7 +5,7 @@ use std::path::Path;
 use std::sync::mpsc::channel;
 
 use engine::{Entry, Outcome};
-use journal::{FILE_NAME, Journal, JournalError, Reply, verify};
+use journal::{FILE_NAME, Journal, JournalError, Opening, Reply, verify};
 use record::{Note, Row, decode, kind};
 use rusqlite::Connection;
 
@@ -93,9 +93,23 @@ fn walked(dir: &Path, heard: &Heard) -> Result<(Found, Journal), String> {
     Ok((found, journal))
 }
 
-/// Opens it, adds a row, and closes it.
+/// Opens it as a start does that need not walk the whole chain.
+fn from_later(dir: &Path) -> Result<Journal, String> {
+    let opening = Opening::begin(dir).map_err(|e| format!("LATER {}", said(&e)))?;
+    let later = opening.last_of_kind(kind::STOPPING).map_err(|e| format!("LATER {}", said(&e)))?;
+    let from = later.map_or(0, |row| row.seq);
+    opening.walk(from, &mut |_| {}).map_err(|e| format!("LATER {}", said(&e)))
+}
+
+/// Opens it both ways, adds a row, and closes it.
 fn opened(dir: &Path, heard: &Heard) -> Result<Found, String> {
     let (found, journal) = walked(dir, heard)?;
+    let head = journal.head_hex();
+    drop(journal);
+    let journal = from_later(dir)?;
+    if (journal.rows(), journal.head_hex()) != (found.rows, head) {
+        return Err(format!("LATER a start from a later row ends at row {}", journal.rows()));
+    }
     let term = journal.next_term();
     let (to, replies) = channel::<Reply>();
     let handle = journal.start(to);

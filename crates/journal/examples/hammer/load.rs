@@ -64,7 +64,7 @@ impl Load<'_> {
         let (by, reason) = ("A. Reeve".to_owned(), "asked for".to_owned());
         let (before_day, day) = (SECOND_DAY, SECOND_DAY - 1);
         match self.orders.mode.as_str() {
-            "append" | "stop" => self.batches(0),
+            "append" | "again" | "stop" => self.batches(0),
             "checkpoint" => {
                 let drafts = (0..MANY_ROWS).map(|n| draft(self.orders.seed, n, 0)).collect();
                 self.submit(self.batch_of(drafts))?;
@@ -105,10 +105,10 @@ impl Load<'_> {
         }
     }
 
-    /// All but `append` end with a clean stop; that one as a process that is killed between two
-    /// commits.
+    /// All but `append` and `again` end with a clean stop; those as a process that is killed between
+    /// two commits.
     fn end(self, code: u8) -> Result<u8, String> {
-        if self.orders.mode == "append" || code != 0 {
+        if ["append", "again"].contains(&self.orders.mode.as_str()) || code != 0 {
             std::mem::forget(self.handle);
             return Ok(code);
         }
