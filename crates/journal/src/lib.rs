@@ -66,6 +66,8 @@ mod verify;
 mod durable;
 mod error;
 
+mod view;
+
 pub use anchor::{Anchor, is_signed, public_key};
 pub use backup::restore;
 pub use batch::{Acked, Batch, Minute, MinuteReading, Reply, Seen};
@@ -81,3 +83,8 @@ pub use salvage::{Salvaged, salvage};
 pub use task::{Done, Stamp, Task};
 pub use thread::Handle;
 pub use verify::{Checks, Verified, verify, verify_with};
+pub use view::{
+    Asked, AskedFor, Cell, Entries, Entry, Rest, VIEW_FORMAT, VIEW_NAME, View, ViewError, ViewHead,
+    ViewPace, ViewReader, ViewSays, ViewState, ViewThread, Visit, Wanted, ask, evidence_ahead,
+    rebuild_view,
+};

@@ -140,7 +140,7 @@ fn merged(parts: impl Iterator<Item = (Whose, Vec<Row>)>) -> Vec<Vec<Row>> {
 }
 
 /// An error and what lies under it, in one line.
-pub(crate) fn in_words(error: &JournalError) -> String {
+pub(crate) fn in_words(error: &dyn Error) -> String {
     let mut words = error.to_string();
     let mut under = error.source();
     while let Some(e) = under {
