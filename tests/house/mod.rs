@@ -56,6 +56,7 @@ pub fn is_test(path: &str) -> bool {
         || path.ends_with("/tests.rs")
         || path.ends_with("/fixture.rs")
         || path.contains("/examples/")
+        || path.contains("/benches/")
 }
 
 /// The text without its `#[cfg(test)]` items, wherever they stand.

@@ -128,6 +128,57 @@ fn killed_in_a_release(run: &Run, faults: &[Fault]) -> usize {
     killed.count()
 }
 
+/// The run's rows as the daemon keeps them, until some are packed: bytes a row on disk, while it is
+/// live and once it is packed. The chain holds, and every packed row still says what it said.
+fn room(run: &Run, site: &Site) {
+    let dir = tempfile::tempdir().unwrap();
+    let journal = journal::Journal::open(dir.path(), &mut |_| {}).unwrap();
+    let (to, replies) = std::sync::mpsc::channel();
+    let handle = journal.start(to);
+    let mut rows = 0;
+    // Twice the month, so that there is enough to pack.
+    for (term, entries) in (1..=2).flat_map(|term| run.entries.chunks(40).map(move |e| (term, e))) {
+        let drafts: Vec<_> = entries.iter().map(|(_, e)| record::encode(e, site)).collect();
+        rows += drafts.len();
+        let (utc, boot) = (entries[0].0.utc, entries[0].0.boot);
+        let (intents, seen) = (Vec::new(), journal::Seen::default());
+        handle.submit(journal::Batch { term, utc, boot, drafts, intents, seen }).unwrap();
+        assert!(matches!(replies.recv().unwrap(), journal::Reply::Acked(_)));
+    }
+    let (utc, boot) = (start(), Mono::ZERO);
+    let live = bytes(dir.path(), &handle, &replies) / rows as f64;
+    let task = journal::Task::Seal { before_day: 0 };
+    handle.task(journal::Stamp { term: 2, utc, boot }, task).unwrap();
+    let journal::Reply::Done(done) = replies.recv().unwrap() else { panic!("no answer") };
+    done.outcome.unwrap();
+    handle.close().unwrap();
+    let db = rusqlite::Connection::open(dir.path().join(journal::FILE_NAME)).unwrap();
+    let text = "SELECT sum(length(body)), sum(last_seq - first_seq + 1) FROM packs";
+    let (packed, of): (f64, f64) = db.query_row(text, [], |r| Ok((r.get(0)?, r.get(1)?))).unwrap();
+    drop(db);
+    println!(
+        "a row on disk             {live:>10.0} bytes live, {:.0} packed ({rows} rows)",
+        packed / of
+    );
+    assert!(packed / of <= 140.0, "{packed} bytes of {of} rows");
+    assert_eq!(journal::verify(dir.path(), &mut |_, _| {}).unwrap().rows, rows as u64);
+    let read = journal::rows(dir.path(), &journal::Filter::default()).unwrap();
+    for (row, (_, entry)) in read.iter().zip(run.entries.iter().chain(&run.entries)) {
+        assert_eq!(&record::decode(row, site).unwrap(), entry);
+    }
+}
+
+fn bytes(
+    dir: &std::path::Path,
+    handle: &journal::Handle,
+    replies: &std::sync::mpsc::Receiver<journal::Reply>,
+) -> f64 {
+    let stamp = journal::Stamp { term: 2, utc: start(), boot: Mono::ZERO };
+    handle.task(stamp, journal::Task::Checkpoint).unwrap();
+    assert!(matches!(replies.recv().unwrap(), journal::Reply::Done(_)));
+    std::fs::metadata(dir.join(journal::FILE_NAME)).unwrap().len() as f64
+}
+
 #[test]
 fn scen_thirty_days_with_faults_release_what_foresight_could_and_break_nothing() {
     let site = tarrow();
@@ -147,6 +198,7 @@ fn scen_thirty_days_with_faults_release_what_foresight_could_and_break_nothing()
     println!("perfect foresight         {foresight_m3:>10.0} m3, of which {:.2} %", share * 100.0);
     println!("daemon killed in a release {in_release:>9}");
     println!("steps of the engine       {:>10}", run.steps);
+    room(&run, &site);
     for (utc, text) in run.notices.iter().filter(|_| !report.findings.is_empty()) {
         println!("  {utc} {text}");
     }
