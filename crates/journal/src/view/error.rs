@@ -49,6 +49,10 @@ pub enum ViewError {
     Io { path: PathBuf, doing: &'static str, source: std::io::Error },
     #[error("the evidence cannot be read")]
     Evidence(#[source] JournalError),
+    #[error("{}: writing it", path.display())]
+    Csv { path: PathBuf, source: csv::Error },
+    #[error("{}: writing it", path.display())]
+    Parquet { path: PathBuf, source: parquet::errors::ParquetError },
     #[error("--{field} {value:?}: {remedy}")]
     Refused { field: &'static str, value: String, remedy: String },
 }

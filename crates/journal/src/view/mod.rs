@@ -31,6 +31,8 @@ pub use rebuild::rebuild_view;
 pub use thread::{ViewPace, ViewSays, ViewState, ViewThread};
 pub use write::View;
 
+pub(crate) use file::{beside, create};
+
 pub(crate) fn hex(bytes: &[u8]) -> String {
     const DIGITS: &[u8; 16] = b"0123456789abcdef";
     let digit = |n: u8| char::from(DIGITS[usize::from(n)]);

@@ -132,8 +132,21 @@ impl ViewReader {
         Ok(())
     }
 
+    /// Where it has come to by the moment that is being read.
+    pub(crate) fn head_now(&self) -> Result<ViewHead, ViewError> {
+        file::known(&self.db, &self.path)
+    }
+
+    /// Everything that rows are about, by name.
+    pub fn subjects(&self) -> Result<Vec<String>, ViewError> {
+        let sql = |e| self.sql("reading subjects", e);
+        let mut statement =
+            self.db.prepare("SELECT DISTINCT subject FROM abouts ORDER BY subject").map_err(sql)?;
+        statement.query_map([], |r| r.get(0)).and_then(Iterator::collect).map_err(sql)
+    }
+
     /// What is read in here is of one moment, whatever is written meanwhile.
-    fn at_one_moment<T>(
+    pub(crate) fn at_one_moment<T>(
         &self,
         read: impl FnOnce() -> Result<T, ViewError>,
     ) -> Result<T, ViewError> {
