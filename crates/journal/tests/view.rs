@@ -1,5 +1,7 @@
 //! The view: equal to the evidence however it came about, never in its way, and mended by itself.
 
+#![allow(clippy::unwrap_used, reason = "a test stops where an assumption breaks")]
+
 mod common;
 
 use std::collections::BTreeMap;
