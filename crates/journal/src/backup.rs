@@ -155,7 +155,7 @@ fn copy_segments(from: &Path, to: &Path) -> io::Result<()> {
     if !from.exists() {
         return Ok(());
     }
-    fs::create_dir_all(to)?;
+    durable::folder(to)?;
     for entry in fs::read_dir(from)? {
         let entry = entry?;
         let target = to.join(entry.file_name());
@@ -166,9 +166,11 @@ fn copy_segments(from: &Path, to: &Path) -> io::Result<()> {
         let copy = to.join(format!("{}.{PART}", entry.file_name().display()));
         fs::copy(entry.path(), &copy)?;
         File::open(&copy)?.sync_all()?;
-        durable::rename(&copy, &target)?;
+        fs::rename(&copy, &target)?;
     }
-    Ok(())
+    // Those that were there already may have names that no sync has reached: an earlier attempt may
+    // have ended, or failed, between the two.
+    File::open(to)?.sync_all()
 }
 
 /// Removes the oldest copies beyond `keep`, and what an earlier run left half done.
