@@ -2,9 +2,11 @@
 
 import json
 import multiprocessing
+import multiprocessing.util
 import os
 import shlex
 import shutil
+import signal
 import subprocess
 import sys
 import tempfile
@@ -104,6 +106,11 @@ class Place:
                 subprocess.run([self.hammer, *how, state], stdout=out, check=True)
         return made
 
+    def close(self):
+        if self._checker is not None:
+            self._checker.stdin.close()
+            self._checker.wait()
+
     def argv(self, mode, seed=1, batches=6, durability="full", patience_ms=10_000):
         return [
             self.hammer, "run", mode, self.state, "--seed", str(seed), "--batches", str(batches),
@@ -139,7 +146,9 @@ _place = None
 
 def _begin(base, hammer_path):
     global _place
+    signal.signal(signal.SIGTERM, signal.SIG_DFL)
     _place = Place(base, hammer_path)
+    multiprocessing.util.Finalize(None, _place.close, exitpriority=10)
 
 
 def _work(job):
@@ -164,6 +173,7 @@ class Rig:
         jobs = min(jobs or self.jobs, max(1, len(tasks)))
         begin = shown = time.monotonic()
         with multiprocessing.Pool(jobs, _begin, (self.base, self.hammer)) as pool:
+            # Ends at once if something breaks in the loop, and in good order otherwise.
             chunk = max(1, min(16, len(tasks) // (jobs * 8)))
             jobs_list = ((function, task) for task in tasks)
             ended = pool.imap_unordered(_work, jobs_list, chunksize=chunk)
@@ -172,6 +182,8 @@ class Rig:
                 if time.monotonic() - shown > 10 or n == len(tasks):
                     shown = time.monotonic()
                     say(f"{name}: {n} of {len(tasks)}, {shown - begin:.0f} s")
+            pool.close()
+            pool.join()
 
     def here(self):
         """A place for this process."""

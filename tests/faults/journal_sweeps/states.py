@@ -19,8 +19,9 @@ PART = "states"
 # With up to so many open calls every subset is taken; drawn ones above.
 SUBSETS_OF = 4
 CONTROLS = ["normal", "off"]
-# Syncs of an `append` whose failure once lost acknowledged rows: of the switch to WAL, of a commit.
-FOUND = [4, 8, 49, 56]
+# Calls from which the next sync fails, where that once lost what was promised: of the switch to WAL,
+# of a commit, of a backup's folder of segments.
+FOUND = [("append", 4), ("append", 8), ("append", 49), ("append", 56), ("backup", 150)]
 UNBORN = "file is not a database"
 
 
@@ -49,7 +50,7 @@ def _tasks(r):
     draw = random.Random(r.seed)
     place = r.here()
     # Runs of each mode and recoveries, states drawn after a call, failed syncs.
-    runs, recoveries, drawn, faults = (10, 10, 8, 60) if r.long else (1, 1, 1, 2)
+    runs, recoveries, drawn, faults = (10, 10, 8, 30) if r.long else (1, 1, 1, 2)
     few = max(1, drawn // 3)
     tasks = []
     for mode in rig.MODES:
@@ -60,13 +61,16 @@ def _tasks(r):
         for n in range(recoveries):
             tasks.append(_task(mode, r.seed + n, "full", few, stride, depth=draw.randint(2, 5)))
         syncs = _syncs(place, mode, r.seed)
-        choices = [(at, times) for at in syncs for times in (1, 2, 3, 4)]
-        for at, times in draw.sample(choices, min(len(choices), faults // rig.SHARE.get(mode, 1))):
+        choices = [(at, times) for at in syncs for times in (2, 3, 4)]
+        choices = draw.sample(choices, min(len(choices), faults // rig.SHARE.get(mode, 1)))
+        if r.long:
+            choices += [(at, 1) for at in syncs]
+        for at, times in choices:
             more = {"fault": at, "times": times, "depth": draw.choice((1, 1, 2))}
             tasks.append(_task(mode, r.seed, "full", few, stride, **more))
     draw.shuffle(tasks)
     # What was found once is looked for each time: see the README.
-    found = [_task("append", 1, "full", 1, 1, fault=at, times=1) for at in FOUND]
+    found = [_task(mode, 1, "full", 1, 1, fault=at, times=1) for mode, at in FOUND]
     controls = [_task("append", r.seed, control, 2, 1) for control in CONTROLS]
     return found + tasks + controls
 

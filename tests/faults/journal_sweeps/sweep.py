@@ -13,6 +13,7 @@ import argparse
 import importlib
 import json
 import os
+import signal
 import sys
 
 sys.dont_write_bytecode = True
@@ -35,6 +36,8 @@ def main():
     if args.part == "build":
         print(rig.hammer())
         return rig.GOOD
+    # So that what is under way is ended and cleared away.
+    signal.signal(signal.SIGTERM, lambda *_: sys.exit(rig.BAD))
     r = rig.Rig(args.jobs, args.seed, args.long)
     try:
         if args.part == "again":
