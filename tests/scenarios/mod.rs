@@ -3,4 +3,5 @@
 mod delaware;
 pub mod tarrow;
 pub mod thirty_days;
+mod view;
 mod why;

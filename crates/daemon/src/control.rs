@@ -25,9 +25,21 @@ const WAIT_KEEP: Duration = Duration::from_secs(900);
 pub enum Request {
     Now,
     Plan,
-    Why { asset: String, at: Option<String> },
-    Rows { from: u64, limit: u64 },
-    Act { by: String, reason: String, act: ActRequest },
+    Why {
+        asset: String,
+        at: Option<String>,
+    },
+    Rows {
+        from: u64,
+        limit: u64,
+    },
+    /// How far the view is, and the evidence.
+    View,
+    Act {
+        by: String,
+        reason: String,
+        act: ActRequest,
+    },
     Keep(KeepRequest),
 }
 

@@ -77,7 +77,7 @@ pub use error::JournalError;
 pub use file::FILE_NAME;
 /// The form of the evidence file that this version writes.
 pub const FORM: u32 = forms::FORM as u32;
-pub use export::{EXPORTED, Export, ExportForm, Exported, export, guarded};
+pub use export::{EXPORTED, Export, ExportForm, Exported, csv_line, export, guarded};
 pub use inspect::{Filter, each_row, events, minutes, rows};
 pub use journal::Journal;
 pub use opening::Opening;

@@ -10,7 +10,7 @@ use serde::Serialize;
 use units::Utc;
 
 use super::shell::Shell;
-use super::{acts, keeping};
+use super::{acts, keeping, view};
 use crate::control::{Asked, Request, Response};
 use crate::show::{WhyView, now_view, plan_view, why_planned, why_view};
 
@@ -33,6 +33,7 @@ pub fn answer(shell: &mut Shell, asked: Asked) -> Result<()> {
             let limit = usize::try_from(limit).unwrap_or(ROWS_MOST).min(ROWS_MOST);
             rows(shell, from, limit, reply, |rows| to_json(&rows));
         }
+        Request::View => say(&reply, &view::state(shell)),
         Request::Keep(what) => return keeping::asked(shell, what, reply),
         Request::Act { by, reason, act } => {
             let site = shell.parts.site.clone();

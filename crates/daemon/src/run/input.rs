@@ -1,7 +1,7 @@
 //! Everything that comes to the loop, in one queue.
 
 use host::HostEvent;
-use journal::Reply;
+use journal::{Reply, ViewSays};
 
 use super::workers::Done;
 use crate::control::Asked;
@@ -10,6 +10,7 @@ use crate::control::Asked;
 pub enum Input {
     Host(HostEvent),
     Journal(Reply),
+    View(ViewSays),
     Asked(Asked),
     Done(Done),
     Stop,
@@ -18,6 +19,11 @@ pub enum Input {
 impl From<Reply> for Input {
     fn from(r: Reply) -> Self {
         Self::Journal(r)
+    }
+}
+impl From<ViewSays> for Input {
+    fn from(s: ViewSays) -> Self {
+        Self::View(s)
     }
 }
 impl From<Asked> for Input {

@@ -10,6 +10,7 @@ mod open;
 mod plant_events;
 mod shell;
 mod speak;
+mod view;
 mod workers;
 
 use anyhow::Result;

@@ -19,7 +19,7 @@ use units::Utc;
 use super::input::Input;
 use super::keeping::{self, Keeping};
 use super::shell::{Parts, Shell};
-use super::workers;
+use super::{view, workers};
 use crate::cli::RunArgs;
 use crate::clock::{Clock, Watch};
 use crate::{control, paths};
@@ -55,6 +55,7 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
     let parts = Parts {
         state: State::new(site.clone(), config(&clock)?),
         journal: journal.start(to.clone()),
+        view: view::start(&state_dir, rows, to.clone())?,
         host: start_host(&site, args, &state_dir, term, clock, &to, tokens_to)?,
         jobs: workers::start(site.clone(), to.clone())?,
         watch: Watch::new(None),

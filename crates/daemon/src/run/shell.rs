@@ -9,7 +9,7 @@ use std::time::Duration;
 use anyhow::Result;
 use engine::{Carried, ClockTrust, Effects, Event, Job, Severity, Stamp, State, step};
 use host::{Host, HostEvent, RestPoint};
-use journal::{Batch, Handle, Reply};
+use journal::{Batch, Handle, Reply, ViewThread};
 use model::{AssetId, RestAction, Site, Term};
 use protocol::RestCause;
 use record::{Fold, Intent, Note, Row};
@@ -17,7 +17,7 @@ use units::Mono;
 
 use super::input::Input;
 use super::keeping::{self, Keeping};
-use super::{asked, plant_events, speak};
+use super::{asked, plant_events, speak, view};
 use crate::cli::Exit;
 use crate::clock::{Clock, Watch};
 use crate::control::Response;
@@ -31,6 +31,7 @@ pub struct Parts {
     pub term: Term,
     pub state: State,
     pub journal: Handle,
+    pub view: ViewThread,
     pub host: Host,
     pub jobs: Sender<Job>,
     pub heartbeat: PathBuf,
@@ -149,6 +150,10 @@ impl Shell {
                 self.host_event(event)
             }
             Input::Journal(reply) => self.journal_reply(reply),
+            Input::View(what) => {
+                view::says(self, what);
+                Ok(())
+            }
             Input::Asked(asked) => asked::answer(self, asked),
             Input::Done(done) => {
                 self.feed(Event::JobDone { job: done.job, product: done.product })?;
@@ -175,6 +180,7 @@ impl Shell {
     }
 
     fn journal_reply(&mut self, reply: Reply) -> Result<()> {
+        self.parts.view.take(view::rows_of(&reply));
         match reply {
             Reply::Acked(acked) => {
                 for row in &acked.rows {
@@ -312,7 +318,9 @@ impl Shell {
         while self.moving() && self.parts.clock.boot() < until {
             if let Ok(input) = self.parts.inbox.recv_timeout(Duration::from_millis(50)) {
                 match input {
-                    Input::Host(HostEvent::Readings { .. }) | Input::Journal(_) => {
+                    Input::Host(HostEvent::Readings { .. })
+                    | Input::Journal(_)
+                    | Input::View(_) => {
                         self.take(input)?;
                     }
                     _ => {}
@@ -327,6 +335,13 @@ impl Shell {
         self.parts.host.finish(Duration::from_secs(5));
         // What is still to be acknowledged is committed by the close itself.
         self.parts.journal.close()?;
+        // Its last rows are for the view too.
+        for input in self.parts.inbox.try_iter() {
+            if let Input::Journal(reply) = input {
+                self.parts.view.take(view::rows_of(&reply));
+            }
+        }
+        self.parts.view.stop();
         say!("stopped: assets sent to rest, journal closed");
         Ok(Exit::Done)
     }

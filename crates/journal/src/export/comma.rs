@@ -22,6 +22,23 @@ pub fn guarded(text: &str) -> Cow<'_, str> {
     }
 }
 
+/// One line of CSV by RFC 4180, its CRLF too. Texts are to be [`guarded`] before.
+pub fn csv_line(cells: impl Iterator<Item = String>) -> String {
+    let mut writer = builder().from_writer(Vec::new());
+    let written = cells.map(String::into_bytes).try_for_each(|cell| writer.write_field(cell));
+    written
+        .and_then(|()| writer.write_record(None::<&[u8]>))
+        .expect("memory takes a line of any length");
+    let bytes = writer.into_inner().expect("memory takes a line of any length");
+    String::from_utf8(bytes).expect("texts with ASCII between them are text")
+}
+
+fn builder() -> WriterBuilder {
+    let mut builder = WriterBuilder::new();
+    builder.terminator(Terminator::CRLF).quote_style(QuoteStyle::Necessary);
+    builder
+}
+
 pub(super) fn write(
     reader: &ViewReader,
     table: &str,
@@ -30,11 +47,7 @@ pub(super) fn write(
 ) -> Result<u64, ViewError> {
     let wrong = |source| ViewError::Csv { path: to.to_owned(), source };
     let file = File::create(to).map_err(|e| ViewError::io(to, "writing it", e))?;
-    let mut writer = WriterBuilder::new()
-        .terminator(Terminator::CRLF)
-        .quote_style(QuoteStyle::Necessary)
-        .buffer_capacity(1 << 16)
-        .from_writer(file);
+    let mut writer = builder().buffer_capacity(1 << 16).from_writer(file);
     let columns = columns::columns(reader, table)?;
     writer.write_record(columns.iter().map(|c| &c.name)).map_err(wrong)?;
     let rows = columns::each_row(reader, table, progress, &mut |row| {

@@ -14,7 +14,7 @@ use rusqlite::backup::{Backup, StepResult};
 use crate::durable;
 use crate::view::{ViewError, ViewHead, ViewReader, beside, create};
 
-pub use comma::guarded;
+pub use comma::{csv_line, guarded};
 
 /// Tables and views that can be exported, `entries` first.
 pub const EXPORTED: [&str; 16] = [
