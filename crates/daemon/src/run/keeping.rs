@@ -27,8 +27,6 @@ pub struct Keeping {
     seen: Seen,
     /// When what was seen is handed over at the latest, alone if nothing followed from it.
     flush_at: Option<Mono>,
-    /// The day of the last snapshot: one a day is enough for a quick start.
-    snapshot_of: Option<i32>,
     /// Since when, and why, the journal is lost.
     lost: Option<(Utc, String)>,
     key: Option<[u8; 32]>,
@@ -50,7 +48,6 @@ impl Keeping {
             minutes: Minutes::default(),
             seen: Seen::default(),
             flush_at: None,
-            snapshot_of: None,
             lost: None,
             key: key.transpose()?,
             asked: Vec::new(),
@@ -108,6 +105,7 @@ pub fn turn(shell: &mut Shell) -> Result<()> {
     for kind in shell.keeping.duties.take(now) {
         duty(shell, kind, now)?;
     }
+    shell.snapshot(false)?;
     if shell.keeping.flush_due(shell.parts.clock.boot()) {
         shell.submit_alone(Vec::new())?;
     }
@@ -118,10 +116,8 @@ fn duty(shell: &mut Shell, kind: DutyKind, now: Utc) -> Result<()> {
     if kind == DutyKind::Replan {
         return shell.feed(Event::Replan);
     }
-    if kind == DutyKind::Seal
-        && shell.keeping.snapshot_of.replace(duties::day(now)) != Some(duties::day(now))
-    {
-        shell.snapshot()?;
+    if kind == DutyKind::Seal {
+        shell.snapshot(true)?;
     }
     for task in shell.keeping.tasks(kind, now, &shell.parts.site) {
         start(shell, task)?;
@@ -198,6 +194,9 @@ pub fn asked(shell: &mut Shell, what: KeepRequest, reply: SyncSender<Response>) 
         KeepRequest::Backup => DutyKind::Backup,
         KeepRequest::Verify => DutyKind::Verify,
     };
+    if kind == DutyKind::Seal {
+        shell.snapshot(true)?;
+    }
     let tasks = shell.keeping.tasks(kind, now, &shell.parts.site);
     match tasks.into_iter().next() {
         Some(task) => wait(shell, task, reply),

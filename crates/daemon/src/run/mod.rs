@@ -9,6 +9,7 @@ mod minutes;
 mod open;
 mod plant_events;
 mod shell;
+mod so_far;
 mod speak;
 mod view;
 mod workers;

@@ -19,6 +19,7 @@ use units::Utc;
 use super::input::Input;
 use super::keeping::{self, Keeping};
 use super::shell::{Parts, Shell};
+use super::so_far::SoFar;
 use super::{view, workers};
 use crate::cli::RunArgs;
 use crate::clock::{Clock, Watch};
@@ -35,7 +36,7 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
     fs::create_dir_all(&state_dir)
         .with_context(|| format!("making the state folder {}", state_dir.display()))?;
     let clock = clock(args, &site, &state_dir)?;
-    let (journal, fold, whole) = record_so_far(&state_dir, &site)
+    let (journal, fold, walked_from) = record_so_far(&state_dir, &site)
         .with_context(|| format!("opening the journal in {}", state_dir.display()))?;
     let mut carried: Carried = fold.clone().finish();
     let heartbeat = state_dir.join(site.settings.heartbeat_file.as_deref().unwrap_or("heartbeat"));
@@ -46,7 +47,7 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
         term = term.0,
         rows,
         "journal verified{}",
-        if whole { "" } else { ", the rest follows" }
+        if walked_from == 0 { "" } else { ", the rest follows" }
     );
     let lifted = journal.lifted_from();
     let (to, inbox) = channel::<Input>();
@@ -71,19 +72,20 @@ pub fn open(args: &RunArgs, site: Site) -> Result<Shell> {
     control::listen(&paths::socket(&state_dir), to.clone())?;
     signals(to)?;
     let keeping = Keeping::new(&parts.site, &args.site.site, state_dir, clock.utc())?;
-    let mut shell = Shell::new(parts, carried, keeping, fold, rows);
+    let so_far = SoFar::new(fold, walked_from, rows);
+    let mut shell = Shell::new(parts, carried, keeping, so_far);
     if let Some(from) = lifted {
         shell.submit_alone(vec![Note::Migrated { from, to: journal::FORM }])?;
     }
-    if !whole {
+    if walked_from > 0 {
         keeping::start(&shell, Task::Verify)?;
     }
     Ok(shell)
 }
 
-/// The journal, what its rows add up to, and whether all of them have been verified: from the last
-/// snapshot on, if there is one that reads, and else from the first row.
-fn record_so_far(dir: &Path, site: &Site) -> Result<(Journal, Fold, bool), JournalError> {
+/// The journal, what its rows add up to, and the row after which they were verified: that of the last
+/// snapshot, if there is one that reads, and else 0.
+fn record_so_far(dir: &Path, site: &Site) -> Result<(Journal, Fold, u64), JournalError> {
     let opening = Opening::begin(dir)?;
     let kept = opening.last_of_kind(record::kind::SNAPSHOT)?.and_then(|row| {
         match record::decode_note(&row).ok()? {
@@ -93,7 +95,7 @@ fn record_so_far(dir: &Path, site: &Site) -> Result<(Journal, Fold, bool), Journ
     });
     let (after, mut fold) = kept.unwrap_or_else(|| (0, Fold::new(site)));
     let journal = opening.walk(after, &mut |row| fold.push(&row))?;
-    Ok((journal, fold, after == 0))
+    Ok((journal, fold, after))
 }
 
 /// When the last life of the daemon was last well: an outage is counted from here, since a quiet

@@ -12,11 +12,12 @@ use host::{Host, HostEvent, RestPoint};
 use journal::{Batch, Handle, Reply, ViewThread};
 use model::{AssetId, RestAction, Site, Term};
 use protocol::RestCause;
-use record::{Fold, Intent, Note, Row};
+use record::{Intent, Note, Row};
 use units::Mono;
 
 use super::input::Input;
 use super::keeping::{self, Keeping};
+use super::so_far::SoFar;
 use super::{asked, plant_events, speak, view};
 use crate::cli::Exit;
 use crate::clock::{Clock, Watch};
@@ -51,9 +52,7 @@ pub struct Shell {
     welcomed: bool,
     beat_at: Mono,
     pub(super) keeping: Keeping,
-    /// What the rows so far add up to, for the next start.
-    fold: Fold,
-    folded: u64,
+    so_far: SoFar,
 }
 
 /// The longest that the loop sleeps, in real time: the heartbeat and the clock's watch.
@@ -62,7 +61,7 @@ const TURN: Duration = Duration::from_secs(1);
 const STOP_WITHIN: Duration = Duration::from_secs(20);
 
 impl Shell {
-    pub fn new(parts: Parts, carried: Carried, keeping: Keeping, fold: Fold, folded: u64) -> Self {
+    pub fn new(parts: Parts, carried: Carried, keeping: Keeping, so_far: SoFar) -> Self {
         Self {
             parts,
             carried: Some(carried),
@@ -74,8 +73,7 @@ impl Shell {
             welcomed: false,
             beat_at: Mono::ZERO,
             keeping,
-            fold,
-            folded,
+            so_far,
         }
     }
 
@@ -297,14 +295,13 @@ impl Shell {
 
     /// A committed row, for the next start.
     pub(super) fn took(&mut self, row: &Row) {
-        self.fold.push(row);
-        self.folded = row.seq;
+        self.so_far.push(row);
     }
 
-    /// What the rows so far add up to, so that the next start need not read them.
-    pub(super) fn snapshot(&mut self) -> Result<()> {
-        let (of_seq, bytes) = (self.folded, self.fold.snapshot());
-        self.submit_alone(vec![Note::Snapshot { of_seq, bytes }])
+    /// What the rows so far add up to, written down if it is time for it.
+    pub(super) fn snapshot(&mut self, daily: bool) -> Result<()> {
+        let now = self.parts.clock.utc();
+        self.so_far.due(now, daily).map_or(Ok(()), |note| self.submit_alone(vec![note]))
     }
 
     /// Assets to rest, adapters ended, journal closed.
