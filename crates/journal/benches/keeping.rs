@@ -5,6 +5,8 @@
 //! line a figure: name, value, unit. With ROWS it only makes a record of so many decisions in DIR and
 //! leaves it there, for a daemon to start on. `tests/BENCHES.md` keeps results.
 
+#![expect(clippy::disallowed_methods, reason = "a bench reads a clock")]
+
 use std::fs::{self, File, OpenOptions};
 use std::io::{Seek, SeekFrom, Write};
 use std::os::fd::AsFd;

@@ -1,6 +1,8 @@
 //! What is kept stays readable and provable: packed, sealed, deleted by rule, held, anchored, copied,
 //! saved from damage.
 
+#![expect(clippy::unwrap_used, reason = "a test ends where something is not as it must be")]
+
 mod common;
 
 use std::fs;
