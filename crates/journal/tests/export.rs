@@ -300,3 +300,13 @@ fn fault_what_is_there_is_kept_and_nothing_half_written_stays() {
     let left: Vec<_> = left.filter(|n| n.to_string_lossy().contains(".part")).collect();
     assert!(left.is_empty(), "{left:?}");
 }
+
+#[test]
+fn regress_a_name_without_a_folder_is_in_this_one() {
+    let dir = site(0);
+    let here = Path::new("regress-export.csv");
+    let done = export(dir.path(), &out(ExportForm::Csv, "acts", here), &mut |_, _| {});
+    let text = fs::read_to_string(here);
+    let _not_there = fs::remove_file(here);
+    assert_eq!(done.unwrap().bytes, text.unwrap().len() as u64);
+}

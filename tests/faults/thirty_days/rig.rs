@@ -143,17 +143,22 @@ impl Rig {
         .unwrap();
         seen
     }
-    /// Every row of the journal: (number, `UTC words`).
+    /// Every row of the evidence: (number, `UTC words`). The view must say the same.
     pub fn rows(&self) -> Vec<(u64, String)> {
+        let rows = journal::rows(&self.path("state"), &journal::Filter::default()).unwrap();
+        let words = |r: &record::Row| (r.seq, format!("{} {}", r.utc, record::describe(r)));
+        let rows: Vec<_> = rows.iter().map(words).collect();
         let out = self.command(&["journal", "query"], &["--json", "--limit", "100000000"]);
-        assert!(out.status.success(), "{}", String::from_utf8_lossy(&out.stderr));
+        let said = String::from_utf8_lossy(&out.stderr);
+        assert!(out.status.success() && said.is_empty(), "journal query: {said}");
         let text = String::from_utf8(out.stdout).unwrap();
         let row = |line: &str| {
             let v: Value = serde_json::from_str(line).unwrap();
             let text = |key: &str| v[key].as_str().unwrap().to_owned();
             (v["seq"].as_u64().unwrap(), format!("{} {}", text("utc"), text("words")))
         };
-        text.lines().map(row).collect()
+        assert_eq!(text.lines().map(row).collect::<Vec<_>>(), rows, "the view is not the evidence");
+        rows
     }
     pub fn plant_record(&self) -> String {
         fs::read_to_string(self.path("state/plant/plant.jsonl")).unwrap()

@@ -80,7 +80,9 @@ pub fn export(
 ) -> Result<Exported, ViewError> {
     check(export)?;
     let reader = ViewReader::open(dir)?;
-    let part = Part::begin(export.to)?;
+    let to =
+        std::path::absolute(export.to).map_err(|e| ViewError::io(export.to, "placing it", e))?;
+    let part = Part::begin(&to)?;
     let (rows, head) = reader.at_one_moment(|| {
         let head = reader.head_now()?;
         let rows = match export.form {
@@ -92,7 +94,7 @@ pub fn export(
         };
         Ok((rows, head))
     })?;
-    let bytes = part.finish(export.to)?;
+    let bytes = part.finish(&to)?;
     Ok(Exported { rows, bytes, head })
 }
 

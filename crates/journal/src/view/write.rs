@@ -38,6 +38,9 @@ impl View {
         if !path.exists() {
             return Err(ViewError::Missing { path });
         }
+        // With ordinary locking the WAL's index is a mapped file, and to write into one without room
+        // ends a process by a signal.
+        file::room(&path)?;
         file::whole(&path)?;
         let db = file::connect(&path, OpenFlags::SQLITE_OPEN_READ_WRITE)?;
         // Named before anything is changed: a stranger's file stays as it is.
