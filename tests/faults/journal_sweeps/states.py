@@ -177,12 +177,18 @@ class _Explorer:
         self.digests.add(digest)
         self.checked += 1
         put(state, self.place.root, self.image)
-        why = self.place.check(state=os.path.join(self.image, "state"), lines=lines)
-        if why and lines == 0 and self.f.get("fault") and why.endswith(UNBORN):
-            # Torn at its very first sync, which failed: nothing was ever written, and it is refused.
+        state, heard = os.path.join(self.image, "state"), heard_in(self.place)
+        why = self.place.check(state=state, heard=heard, lines=lines)
+        if why and self.f.get("fault") and why.endswith(UNBORN) and not self.acknowledged(lines):
+            # Its very first sync failed, which was told, and it was torn: nothing was ever written,
+            # and the file is refused. To take it for an empty one would be to guess.
             return
         if why:
             self.bad.append((which, why))
+
+    def acknowledged(self, lines):
+        with open(heard_in(self.place), encoding="utf-8") as heard:
+            return any(line.startswith("ACK ") for line in heard.readlines()[:lines])
 
 
 class _Moment:
@@ -206,6 +212,10 @@ class _Moment:
             f.writelines(heard)
 
 
+def heard_in(place):
+    return os.path.join(place.base, "heard")
+
+
 def put(state, root, to):
     shutil.rmtree(to, ignore_errors=True)
     os.makedirs(os.path.join(to, "state"))
@@ -224,6 +234,8 @@ class _Recorder:
         self.place, self.each = place, each
         self.fault, self.times, self.failed = fault, times, 0
         self.disk = image.Disk(place.root, rig.RESERVE)
+        # What is heard is written down here first: the run's own file has it a moment later.
+        shutil.copy(place.out, heard_in(place))
         with open(place.out, encoding="utf-8") as f:
             self.lines = len(f.readlines())
         self.op = 0
@@ -246,6 +258,8 @@ class _Recorder:
 
     def hear(self, text):
         self.lines += text.count("\n")
+        with open(heard_in(self.place), "a", encoding="utf-8") as f:
+            f.write(text)
         self.step()
 
     def step(self):
