@@ -168,7 +168,7 @@ pub const ROWS: &[Wrong] = wrong! {
     "an unknown duty" SITE: "duty = \"summary\"" => "duty = \"sumary\"";
         "S011" at "duty = \"sumary", "\"sumary\""; "one of"; "did you mean \"summary\""
     "segments kept for a day" SITE: "segments_for = \"2200 d\"" => "segments_for = \"1 d\"";
-        "S015" at "segments_for", "\"1 d\""; "from 7 d"; "check"
+        "S015" at "segments_for", "\"1 d\""; "from 168:00:00"; "its unit"
 
     // The licence.
     "a clause number twice" LICENCE: "number = \"2.6\"" => "number = \"2.5\"";

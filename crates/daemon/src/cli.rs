@@ -86,7 +86,7 @@ enum Command {
     Plan(commands::plan::PlanArgs),
     /// Why an asset is as it is, and what would have to change
     Why(commands::why::WhyArgs),
-    /// The record: verify, query
+    /// The record: verified, queried, exported, sealed, copied, saved
     Journal(commands::journal::JournalArgs),
     /// What an error code means and what to do
     Explain(commands::explain::ExplainArgs),
