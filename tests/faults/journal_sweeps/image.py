@@ -181,9 +181,10 @@ def _named(names, renames):
     return names
 
 
-def digest(state):
+def digest(state, root):
+    """The same wherever the folder lies."""
     h = hashlib.blake2b(digest_size=12)
     for path in sorted(state):
-        h.update(f"{path}\0{len(state[path])}\0".encode())
+        h.update(f"{path[len(root) :]}\0{len(state[path])}\0".encode())
         h.update(state[path])
     return h.digest()

@@ -169,7 +169,7 @@ class _Explorer:
         return lambda sector: mask >> (sector % 64) & 1
 
     def check(self, state, lines, which):
-        digest = image.digest(state)
+        digest = image.digest(state, self.place.root)
         # The same image, but with more acknowledged, is another question.
         if self.seen.get(digest, -1) >= lines:
             return
