@@ -13,7 +13,7 @@ use journal::{Batch, Handle, Reply, ViewThread};
 use model::{AssetId, RestAction, Site, Term};
 use protocol::RestCause;
 use record::{Intent, Note, Row};
-use units::Mono;
+use units::{Mono, Span};
 
 use super::input::Input;
 use super::keeping::{self, Keeping};
@@ -57,6 +57,10 @@ pub struct Shell {
 
 /// The longest that the loop sleeps, in real time: the heartbeat and the clock's watch.
 const TURN: Duration = Duration::from_secs(1);
+/// Real time between two heartbeats; and, as an outage is counted from the last one in the clock's own
+/// time, no more than so much of a fast clock's.
+const BEAT: Span = Span::seconds(5);
+const BEAT_SIMULATED_MOST: Span = Span::minutes(1);
 /// Real time for assets to come to rest, and then for adapters to end, at a clean stop.
 const STOP_WITHIN: Duration = Duration::from_secs(20);
 
@@ -134,7 +138,7 @@ impl Shell {
         if now < self.beat_at {
             return;
         }
-        self.beat_at = now + units::Span::seconds(5 * i64::from(self.parts.clock.speed()));
+        self.beat_at = now + (BEAT * i64::from(self.parts.clock.speed())).min(BEAT_SIMULATED_MOST);
         if let Err(e) = std::fs::write(file, format!("{}\n", self.parts.clock.utc())) {
             tracing::warn!(error = %e, file = %file.display(), "no heartbeat");
         }
@@ -309,9 +313,7 @@ impl Shell {
         tracing::info!("stopping: everything goes to rest");
         self.feed(Event::Stopping { why: "told to stop".to_owned() })?;
         let until = self.parts.clock.boot()
-            + units::Span::seconds(
-                STOP_WITHIN.as_secs() as i64 * i64::from(self.parts.clock.speed()),
-            );
+            + Span::seconds(STOP_WITHIN.as_secs() as i64 * i64::from(self.parts.clock.speed()));
         while self.moving() && self.parts.clock.boot() < until {
             if let Ok(input) = self.parts.inbox.recv_timeout(Duration::from_millis(50)) {
                 match input {
